@@ -1,0 +1,159 @@
+"""Is this the boundary of a cross-section? Where not: what, where, and what to do."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+import numpy as np
+import shapely
+
+from torsionfe.checks import Floats
+from torsionfe.errors import OutlineError
+from torsionfe.outline import arcs
+
+if TYPE_CHECKING:
+    from torsionfe.outline.outline import Outline
+
+__all__ = ["CLEARANCE", "facets", "validate_loop", "validate_voids"]
+
+#: Two points, or two loops, nearer than this fraction of the size count as one.
+CLEARANCE = 1e-7
+_FACET = 1e-6
+_LARGEST_BULGE = 50.0
+_CUSP = np.radians(0.5)
+
+
+def facets(vertices: Floats, bulges: Floats, tolerance: float) -> Floats:
+    """Return the loop with each arc as chords at most ``tolerance`` (length) off, shape (m, 2)."""
+    p, q = vertices, np.roll(vertices, -1, axis=0)
+    turn = np.abs(arcs.sweep(bulges))
+    radius = arcs.arc_radius(p, q, bulges)
+    finite = np.where(turn > 0.0, radius, 1.0)
+    step = 2.0 * np.arccos(np.clip(1.0 - tolerance / finite, 0.0, 1.0 - 1e-9))
+    # at least one chord per 15 degrees, so that a coarse tolerance keeps the shape
+    count = np.where(turn > 0.0, np.ceil(turn / np.minimum(step, np.pi / 12.0)), 1.0).astype(int)
+    rows = np.repeat(np.arange(len(p)), count)
+    within = np.arange(count.sum()) - np.repeat(np.cumsum(count) - count, count)
+    return arcs.point_at(p[rows], q[rows], bulges[rows], within / count[rows])
+
+
+def _place(point: Floats) -> tuple[float, float]:
+    return float(point[0]), float(point[1])
+
+
+def _fail(message: str, point: Floats) -> OutlineError:
+    x, y = _place(point)
+    return OutlineError(message.format(f"({x:g}, {y:g})"), (x, y))
+
+
+def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
+    """Return the loop counter-clockwise, or raise `OutlineError`."""
+    n = len(vertices)
+    if len(bulges) != n:
+        raise OutlineError(f"one bulge an edge is needed: {n} vertices but {len(bulges)} bulges")
+    if n < (2 if np.any(bulges) else 3):
+        raise OutlineError(f"a loop needs 3 vertices (2 where an edge is an arc), got {n}")
+    steep = np.flatnonzero(np.abs(bulges) > _LARGEST_BULGE)
+    if len(steep):
+        k = steep[0]
+        raise _fail(
+            f"the bulge {bulges[k]:g} of edge {k} at {{}} is nearly a full circle (at most {_LARGEST_BULGE:g}): "
+            "split the arc in two",
+            vertices[k],
+        )
+    size = float(np.ptp(vertices, axis=0).max())
+    if size == 0.0:
+        raise _fail("every vertex is at {}: the outline has no size", vertices[0])
+    step = np.hypot(*(np.roll(vertices, -1, axis=0) - vertices).T)
+    twins = np.flatnonzero(step <= CLEARANCE * size)
+    if len(twins):
+        k = int(twins[0])
+        closing = " (the first vertex is not repeated at the end)" if k == n - 1 else ""
+        raise _fail(f"vertices {k} and {(k + 1) % n} are the same point, {{}}: remove one{closing}", vertices[k])
+    area = _signed_area(vertices, bulges)
+    ring = facets(vertices, bulges, _FACET * size)
+    if abs(area) <= 1e-12 * size**2 and shapely.LinearRing(ring).is_simple:
+        raise _fail("the loop encloses no area (near {}): its vertices lie on one line", vertices[0])
+    _refuse_crossing(ring, size)
+    if area < 0.0:
+        order = -np.arange(n) % n
+        vertices, bulges = vertices[order], -bulges[(order - 1) % n]
+    _refuse_cusps(vertices, bulges)
+    return vertices.copy(), np.where(bulges == 0.0, 0.0, bulges)
+
+
+def _signed_area(vertices: Floats, bulges: Floats) -> float:
+    p = vertices - vertices[0]
+    q = np.roll(p, -1, axis=0)
+    chords = 0.5 * float(np.sum(p[:, 0] * q[:, 1] - p[:, 1] * q[:, 0]))
+    return chords + float(arcs.segment_area(p, q, bulges).sum())
+
+
+def _refuse_crossing(ring: Floats, size: float) -> None:
+    """Raise where the loop crosses or touches itself."""
+    shift = ring.mean(axis=0)
+    polygon = shapely.Polygon(ring - shift)
+    if polygon.is_valid:
+        return
+    reason = shapely.is_valid_reason(polygon)
+    place = shift + _reason_point(reason, ring - shift)
+    word = "touches" if "Ring Self" in reason else "crosses"
+    raise _fail(f"the loop {word} itself at {{}}: reorder or move the vertices there", np.round(place, 12))
+
+
+def _reason_point(reason: str, ring: Floats) -> Floats:
+    try:
+        x, y = reason[reason.index("[") + 1 : reason.index("]")].split()[:2]
+        return np.array([float(x), float(y)])
+    except ValueError:
+        return np.asarray(ring[0], dtype=float)
+
+
+def _refuse_cusps(vertices: Floats, bulges: Floats) -> None:
+    """Raise where two edges leave a vertex in nearly the same direction (no material, or a crack)."""
+    n = len(vertices)
+    q = np.roll(vertices, -1, axis=0)
+    leaving = arcs.tangent_at(vertices, q, bulges, np.zeros(n))
+    arriving = np.roll(arcs.tangent_at(vertices, q, bulges, np.ones(n)), 1, axis=0)
+    cross = arriving[:, 0] * leaving[:, 1] - arriving[:, 1] * leaving[:, 0]
+    turn = np.abs(np.arctan2(cross, np.sum(arriving * leaving, axis=1)))
+    sharp = np.flatnonzero(turn > np.pi - _CUSP)
+    if len(sharp):
+        k = int(sharp[0])
+        raise _fail(
+            f"the edges at vertex {k} {{}} fold back on each other (angle {np.degrees(np.pi - turn[k]):.2g} degrees, "
+            f"at least {np.degrees(_CUSP):g} is needed): blunt the tip or round it",
+            vertices[k],
+        )
+
+
+def validate_voids(outer: Outline, voids: Sequence[Outline]) -> None:
+    """Raise `OutlineError` where a void is outside, touching, overlapping, or has voids of its own."""
+    size = outer.size
+    gap = CLEARANCE * size
+    shift = outer.vertices.mean(axis=0)
+    shell = shapely.Polygon(facets(outer.vertices - shift, outer.bulges, _FACET * size))
+    rings = []
+    for k, void in enumerate(voids):
+        if not hasattr(void, "bulges"):
+            raise OutlineError(f"void {k} must be an Outline, got {type(void).__name__}")
+        if void.voids:
+            raise _fail(f"void {k} at {{}} has voids of its own: a void is empty", void.vertices[0])
+        rings.append(shapely.Polygon(facets(void.vertices - shift, void.bulges, _FACET * size)))
+    for k, ring in enumerate(rings):
+        if ring.within(shell) and ring.exterior.distance(shell.exterior) > gap:
+            continue
+        _, near = shapely.shortest_line(shell.exterior, ring.exterior).coords
+        place = np.array(near) + shift
+        if not shell.intersects(ring):
+            raise _fail(f"void {k} at {{}} lies outside the outer loop: move it inside", place)
+        if ring.within(shell):
+            raise _fail(f"void {k} touches the outer loop at {{}}: leave a wall between them", place)
+        raise _fail(f"void {k} crosses the outer loop at {{}}: move or shrink it", place)
+    tree = shapely.STRtree(rings)
+    first, second = tree.query(rings, predicate="dwithin", distance=gap)
+    for a, b in zip(first, second, strict=True):
+        if a < b:
+            place = np.array(shapely.shortest_line(rings[a], rings[b]).coords[0]) + shift
+            raise _fail(f"voids {a} and {b} touch or overlap at {{}}: move them apart or merge them", place)

@@ -1,0 +1,55 @@
+"""Words and numbers for people: the tables that results print as."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable, Sequence
+
+__all__ = ["number", "percent", "table"]
+
+
+def number(value: float, digits: int = 4) -> str:
+    """Return ``value`` with ``digits`` significant digits, plain where that stays short.
+
+    Examples
+    --------
+    >>> number(13512.345, 6), number(1.5e-9), number(-0.00123456)
+    ('13512.3', '1.5e-09', '-0.001235')
+    """
+    if not math.isfinite(value):
+        return "not defined" if math.isnan(value) else ("unbounded" if value > 0 else "-unbounded")
+    return f"{value:.{digits}g}" if abs(value) < 10.0**digits or abs(value) >= 1e7 else f"{value:.0f}"
+
+
+def percent(ratio: float, digits: int = 2) -> str:
+    """Return a ratio as percent with ``digits`` significant digits.
+
+    Examples
+    --------
+    >>> percent(0.01234), percent(-0.5), percent(0.0)
+    ('1.2 %', '-50 %', '0 %')
+    """
+    return f"{ratio * 100.0:.{digits}g} %" if math.isfinite(ratio) else number(ratio)
+
+
+def table(rows: Iterable[Sequence[str]], title: str = "", head: bool = False) -> str:
+    """Return rows of text as an aligned table, the first column to the left, the rest as given.
+
+    Parameters
+    ----------
+    rows : iterable of sequences of str
+        Cells; rows may be of different lengths.
+    title : str
+        A line above, underlined.
+    head : bool
+        Whether the first row holds column heads, set off by a rule.
+    """
+    body = [list(row) for row in rows]
+    width = max((len(row) for row in body), default=0)
+    columns = [max((len(row[k]) for row in body if k < len(row)), default=0) for k in range(width)]
+    lines = [
+        "  ".join(cell.ljust(columns[k]) for k, cell in enumerate(row)).rstrip() for row in body
+    ]
+    if head and lines:
+        lines.insert(1, "  ".join("-" * size for size in columns))
+    return "\n".join(([title, "=" * len(title)] if title else []) + lines)
