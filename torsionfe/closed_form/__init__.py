@@ -1,0 +1,1 @@
+"""Closed forms: exact solids, the sum of thin plates, thin-walled cells."""
