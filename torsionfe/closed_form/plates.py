@@ -263,7 +263,7 @@ def _stubby(plates: list[Plate], beta: Floats) -> list[str]:
         if plate.ratio < THIN_FROM:
             exact = rectangle_series(np.array(max(plate.ratio, 1.0)))[1]
             notes.append(
-                f"{plate.label(k)}: b/t = {plate.ratio:.3g} is below {THIN_FROM:g}, where the rule is meant to start; "
+                f"{plate.label(k)}: b/t = {plate.ratio:.3g}, the rule is meant for {THIN_FROM:g} and more; "
                 f"its beta is {percent(float(beta[k] / exact) - 1.0)} off the exact one"
             )
     return notes
