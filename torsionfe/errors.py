@@ -7,6 +7,7 @@ __all__ = [
     "MeshError",
     "MissingExtraError",
     "OutlineError",
+    "OutlineWarning",
     "ReadError",
     "SolveError",
     "TorsionError",
@@ -40,6 +41,10 @@ class OutlineError(InputError):
     def __reduce__(self) -> tuple[object, ...]:
         """Keep the place when the error crosses a process boundary."""
         return type(self), (str(self), self.at)
+
+
+class OutlineWarning(UserWarning):
+    """An outline can be used, but the answer will carry a fault that the message names."""
 
 
 class ReadError(OutlineError):
