@@ -13,9 +13,9 @@ from torsionfe.checks import Floats
 
 __all__ = [
     "arc_centre",
-    "arc_through",
     "arc_length",
     "arc_radius",
+    "arc_through",
     "point_at",
     "segment_area",
     "sweep",

@@ -238,6 +238,6 @@ class Outline:
         n_arcs = int(np.count_nonzero(self.edges.bulge))
         n_voids = len(self.voids)
         return (
-            f"<Outline {x1 - x0:.6g} x {y1 - y0:.6g}, {len(self.edges)} edges, {n_arcs} arc{'s'[: n_arcs != 1]}, "
-            f"{n_voids} void{'s'[: n_voids != 1]}, area {self.area:.6g}>"
+            f"<Outline {x1 - x0:.6g} x {y1 - y0:.6g}, {len(self.edges)} edges, "
+            f"{n_arcs} arc{'s'[: n_arcs != 1]}, {n_voids} void{'s'[: n_voids != 1]}, area {self.area:.6g}>"
         )

@@ -58,8 +58,8 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
     if len(steep):
         k = steep[0]
         raise _fail(
-            f"the bulge {bulges[k]:g} of edge {k} at {{}} is nearly a full circle (at most {_LARGEST_BULGE:g}): "
-            "split the arc in two",
+            f"the bulge {bulges[k]:g} of edge {k} at {{}} is nearly a full circle (at most "
+            f"{_LARGEST_BULGE:g}): split the arc in two",
             vertices[k],
         )
     size = float(np.ptp(vertices, axis=0).max())
@@ -70,7 +70,8 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
     if len(twins):
         k = int(twins[0])
         closing = " (the first vertex is not repeated at the end)" if k == n - 1 else ""
-        raise _fail(f"vertices {k} and {(k + 1) % n} are the same point, {{}}: remove one{closing}", vertices[k])
+        twin = (k + 1) % n
+        raise _fail(f"vertices {k} and {twin} are the same point, {{}}: remove one{closing}", vertices[k])
     area = _signed_area(vertices, bulges)
     ring = facets(vertices, bulges, _FACET * size)
     if abs(area) <= 1e-12 * size**2 and shapely.LinearRing(ring).is_simple:
@@ -122,8 +123,8 @@ def _refuse_cusps(vertices: Floats, bulges: Floats) -> None:
     if len(sharp):
         k = int(sharp[0])
         raise _fail(
-            f"the edges at vertex {k} {{}} fold back on each other (angle {np.degrees(np.pi - turn[k]):.2g} degrees, "
-            f"at least {np.degrees(_CUSP):g} is needed): blunt the tip or round it",
+            f"the edges at vertex {k} {{}} fold back on each other (angle {np.degrees(np.pi - turn[k]):.2g} "
+            f"degrees, at least {np.degrees(_CUSP):g} is needed): blunt the tip or round it",
             vertices[k],
         )
 
