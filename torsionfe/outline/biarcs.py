@@ -156,13 +156,15 @@ def _rough(point: Curve, t: Floats, vertices: Floats, bulges: Floats, tolerance:
     x = np.asarray(point(probe), dtype=float)
     rows = np.repeat(np.arange(steps), len(_PROBES))
     joint = vertices[1::2]
-    across = arcs.tangent_at(vertices[1:-1:2], vertices[2::2], bulges[1::2], np.zeros(steps))
-    beyond = np.sum((x - joint[rows]) * across[rows], axis=1) > 0.0
-    arc = 2 * rows + beyond
-    gap = _distance(x, vertices[:-1][arc], vertices[1:][arc], bulges[arc])
+    chord = np.hypot(*np.diff(vertices, axis=0).T).reshape(steps, 2).min(axis=1)
+    with np.errstate(invalid="ignore"):  # an arc of no length, where the curve turns back
+        across = arcs.tangent_at(vertices[1:-1:2], vertices[2::2], bulges[1::2], np.zeros(steps))
+        beyond = np.sum((x - joint[rows]) * across[rows], axis=1) > 0.0
+        arc = 2 * rows + beyond
+        gap = _distance(x, vertices[:-1][arc], vertices[1:][arc], bulges[arc])
     worst = gap.reshape(steps, -1).max(axis=1)
     turn = np.abs(arcs.sweep(bulges)).reshape(steps, 2).max(axis=1)
-    return np.flatnonzero((worst > tolerance) | (turn > _WIDEST))
+    return np.flatnonzero(~(worst <= tolerance) | (turn > _WIDEST) | (chord == 0.0))
 
 
 def _distance(x: Floats, p: Floats, q: Floats, bulge: Floats) -> Floats:
