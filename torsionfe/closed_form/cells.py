@@ -123,7 +123,7 @@ class ThinCells:
             raise InputError("areas is empty: there must be one cell or more")
         named = {cell for wall in self.walls for cell in wall.cells}
         if named - set(range(len(sizes))):
-            raise InputError(f"a wall belongs to cell {max(named)}, but areas has only {len(sizes)}, from cell 0")
+            raise InputError(f"a wall bounds cell {max(named)}, but there are {len(sizes)} areas, from 0")
         if len(named) < len(sizes):
             bare = min(set(range(len(sizes))) - named)
             raise InputError(f"cell {bare} has no wall: every cell must be closed by its walls")

@@ -1,0 +1,206 @@
+"""Plates of any outline, from its medial axis: to accept, to edit or to reject."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+from shapely import LineString, MultiPoint, Polygon
+
+from torsionfe.checks import Floats, one_of, positive
+from torsionfe.closed_form.cell_lines import cells_around_voids, middle_line
+from torsionfe.closed_form.derived import DerivedPlates, Joint, band
+from torsionfe.closed_form.idealise import IDEALISATIONS
+from torsionfe.closed_form.joints import Ending, endings, extended, merged
+from torsionfe.closed_form.medial import inscribed_circles
+from torsionfe.closed_form.plates import Plate
+from torsionfe.closed_form.strips import WALL_TAPER, Strip, find_runs, find_strips
+from torsionfe.errors import InputError
+from torsionfe.outline.outline import Outline
+from torsionfe.text import number, percent
+
+__all__ = ["DERIVED", "derive_plates"]
+
+#: The idealisations that can be derived from an outline.
+DERIVED = ("centreline", "full_depth", "straight_through")
+
+_FILLED = 0.85  # of its rectangle a plate must fill
+_WHOLE = 0.95  # of its bounding rectangle a section must fill to be one plate
+_STUBBY = 0.8  # of its thickness: a plate must be at least as wide
+_TAPERED = 1.05  # largest to smallest thickness: from here on a note says so
+
+
+def derive_plates(
+    outline: Outline, idealisation: str = "centreline", taper: float = WALL_TAPER
+) -> DerivedPlates:
+    """Return the plates that an outline is made of, found on its medial axis.
+
+    Stretches whose two faces run side by side become plates; those in one line with material between become
+    one. ``t`` is the mean thickness, ``b`` runs to the section's own end and, at a joint, to where the
+    idealisation says. Fillets count for nothing. What is no plate stays in `DerivedPlates.unplated`.
+
+    Parameters
+    ----------
+    outline : Outline
+    idealisation : str
+        ``'centreline'``, ``'full_depth'`` or ``'straight_through'``: see `IDEALISATIONS`.
+    taper : float
+        Slope of one face against the other up to which a stretch still counts as a plate.
+
+    Raises
+    ------
+    InputError
+        ``outline`` is no `Outline`; an unknown idealisation; a taper that is not above 0 or reaches 1.
+    """
+    if not isinstance(outline, Outline):
+        raise InputError(f"outline must be an Outline, got {type(outline).__name__}")
+    one_of("idealisation", idealisation, DERIVED)
+    if positive("taper", taper) >= 1.0:
+        raise InputError(f"taper must be below 1 (45 degrees), got {taper:g}")
+    circles = inscribed_circles(outline)
+    runs = find_runs(circles, taper)
+    polygon = outline.polygon(1e-5 * outline.size)
+    found = _found(find_strips(circles, runs), polygon, outline.size, idealisation)
+    if not found.kept and not outline.voids:
+        whole = _whole(polygon)
+        if whole is not None:
+            found = whole
+    voids = len(outline.voids)
+    return DerivedPlates(
+        plates=tuple(Plate(_length(found.lines[k]), found.thickness[k]) for k in found.kept),
+        idealisation=idealisation,
+        meaning=IDEALISATIONS[idealisation],
+        notes=tuple(_notes(found, voids)),
+        outline=outline,
+        centre_lines=tuple(found.lines[k] for k in found.kept),
+        joints=tuple(_joints(found)),
+        closed=cells_around_voids(circles, runs, voids) if voids else None,
+        cell_lines=tuple(circles.centre[middle_line(circles, k + 1)] for k in range(voids)),
+    )
+
+
+@dataclass(frozen=True)
+class _Found:
+    """Open strips, how they end, their lines and thicknesses as plates, and which are sound."""
+
+    strips: list[Strip]
+    ends: list[tuple[Ending, Ending]]
+    lines: list[Floats]
+    thickness: list[float]
+    filled: list[float]
+    kept: list[int]
+
+
+def _found(strips: list[Strip], polygon: Polygon, size: float, idealisation: str) -> _Found:
+    walls = [strip for strip in strips if strip.loops[0] != strip.loops[1]]
+    open_strips = merged([strip for strip in strips if strip.loops[0] == strip.loops[1]], polygon)
+    open_strips.sort(key=lambda strip: -strip.length * strip.thickness)
+    ends = endings(open_strips + walls, polygon, size)[: len(open_strips)]
+    found = _Found(open_strips, ends, [], [], [], [])
+    for k, strip in enumerate(open_strips):
+        reach = _reach(k, 0, found, idealisation), _reach(k, 1, found, idealisation)
+        line, thickness = extended(strip.line, reach), strip.thickness_beyond(reach)
+        area = band(line, thickness)
+        filled = area.intersection(polygon).area / area.area
+        found.lines.append(line)
+        found.thickness.append(thickness)
+        found.filled.append(filled)
+        if filled >= _FILLED and _length(line) >= _STUBBY * thickness:
+            found.kept.append(k)
+    return found
+
+
+def _reach(k: int, end: int, found: _Found, idealisation: str) -> float:
+    """Return how far plate ``k`` runs beyond its strip's end, by the idealisation."""
+    ending = found.ends[k][end]
+    if ending.kind != "joint" or idealisation == "centreline":
+        return ending.to_end
+    if idealisation == "straight_through" and not _runs_through(k, ending, found):
+        return ending.to_end - ending.half
+    return min(ending.to_exit, ending.to_end + ending.half)
+
+
+def _runs_through(k: int, ending: Ending, found: _Found) -> bool:
+    """Say whether, at a corner, plate ``k`` is the one that runs through: a flange before a web."""
+    if ending.passes or ending.other >= len(found.strips):
+        return False
+
+    def rank(j: int) -> tuple[int, float, int]:
+        free = sum(one.kind == "free" for one in found.ends[j])
+        return free, round(found.strips[j].length / found.strips[j].thickness, 6), -j
+
+    return rank(k) > rank(ending.other)
+
+
+def _crossings(found: _Found) -> Iterator[tuple[int, int]]:
+    """Yield the pairs of plates that cross, each running on: the plates of a cruciform."""
+    lines = [LineString(found.lines[k]) for k in found.kept]
+    for i, one in enumerate(lines):
+        for j, other in enumerate(lines[:i]):
+            place = one.intersection(other)
+            ends = MultiPoint([*one.coords[:1], *one.coords[-1:], *other.coords[:1], *other.coords[-1:]])
+            if not place.is_empty and ends.distance(place) > found.strips[found.kept[i]].thickness:
+                yield j, i
+
+
+def _length(line: Floats) -> float:
+    return float(np.hypot(*np.diff(line, axis=0).T).sum())
+
+
+def _whole(polygon: Polygon) -> _Found | None:
+    """Return the section as one rectangle, if it nearly is one: a square has no stretch of its own."""
+    box = polygon.minimum_rotated_rectangle
+    if polygon.area < _WHOLE * box.area:
+        return None
+    corners = np.asarray(box.exterior.coords)[:4]
+    middles = 0.5 * (corners + np.roll(corners, -1, axis=0))
+    lines = sorted((middles[[0, 2]], middles[[1, 3]]), key=_length)
+    thickness = _length(lines[0])
+    strip = Strip(lines[1], thickness, thickness, thickness, (0, 0))
+    free = Ending("free", 0.0, 0.0)
+    return _Found([strip], [(free, free)], [lines[1]], [thickness], [polygon.area / box.area], [0])
+
+
+def _joints(found: _Found) -> Iterator[Joint]:
+    """Yield each joint once, in the numbering of the plates that were kept."""
+    place = {k: index for index, k in enumerate(found.kept)}
+    seen = set()
+    for k in found.kept:
+        for ending in found.ends[k]:
+            inside = ending.other < len(found.strips)
+            if ending.other < 0 or (inside and ending.other not in place):
+                continue
+            other = place[ending.other] if inside else -1
+            kind = "step" if ending.kind == "step" else "through" if ending.passes or not inside else "corner"
+            pair = (min(k, ending.other), max(k, ending.other), kind)
+            if kind != "through" and pair in seen:
+                continue
+            seen.add(pair)
+            yield Joint(place[k], other, ending.at, kind)
+
+
+def _notes(found: _Found, voids: int) -> Iterator[str]:
+    if voids:
+        yield "the section has closed cells; their walls are no plates: sum them with cell_sum(plates.cells)"
+    for j, i in _crossings(found):
+        yield f"plates {j} and {i} cross: where they do, the section is counted twice"
+    for k, strip in enumerate(found.strips):
+        middle = found.lines[k].mean(axis=0)
+        where = f"at ({number(middle[0])}, {number(middle[1])})"
+        if k not in found.kept:
+            yield (
+                f"a stretch {number(found.thickness[k])} thick {where} was left out: "
+                f"it fills {percent(found.filled[k])} of a rectangle {number(_length(found.lines[k]))} wide"
+            )
+            continue
+        label = f"plate {found.kept.index(k)}"
+        if strip.most > _TAPERED * strip.least:
+            sizes = f"{number(strip.least)} to {number(strip.most)}"
+            yield f"{label} tapers from {sizes}: the mean thickness is used"
+        if strip.curved:
+            yield f"{label} is curved: its developed width is used"
+        for ending, point in zip(found.ends[k], found.lines[k][[0, -1]], strict=True):
+            if ending.kind == "lost":
+                spot = f"({number(point[0])}, {number(point[1])})"
+                yield f"{label} ends at {spot} in a region that is no plate"
