@@ -42,6 +42,46 @@ class TriMesh:
     edges: Edges
 
     @cached_property
+    def _linked(self) -> tuple[Ints, Ints, Ints]:
+        """Links (node pairs, low first), the links of each triangle, and how often each is used."""
+        ends = np.stack([self.triangles[:, [1, 2, 0]], self.triangles[:, [2, 0, 1]]], axis=2).reshape(-1, 2)
+        key = ends.min(axis=1) * np.int64(len(self.nodes)) + ends.max(axis=1)
+        unique, inverse, uses = np.unique(key, return_inverse=True, return_counts=True)
+        links = np.stack(np.divmod(unique, len(self.nodes)), axis=1)
+        return links, inverse.reshape(-1, 3), uses
+
+    @property
+    def links(self) -> Ints:
+        """Node pairs of the mesh, each once, the lower number first; shape (l, 2)."""
+        return self._linked[0]
+
+    @property
+    def triangle_links(self) -> Ints:
+        """The link opposite to each node of each triangle, shape (m, 3)."""
+        return self._linked[1]
+
+    @cached_property
+    def side_link(self) -> Ints:
+        """The link of each boundary side, shape (s,)."""
+        n = np.int64(len(self.nodes))
+        key = self.sides.min(axis=1) * n + self.sides.max(axis=1)
+        return np.searchsorted(self.links[:, 0] * n + self.links[:, 1], key)
+
+    @cached_property
+    def side_triangle(self) -> tuple[Ints, Ints]:
+        """The triangle of each boundary side, and which of its nodes is opposite; both of shape (s,)."""
+        where = np.full(len(self.links), -1)
+        where[self.triangle_links.ravel()] = np.arange(self.triangle_links.size)
+        triangle, opposite = np.divmod(where[self.side_link], 3)
+        return triangle, opposite
+
+    def unknowns(self, order: int) -> int:
+        """Return how many degrees of freedom elements of an order have on this mesh."""
+        m = len(self.triangles)
+        links = (3 * m + len(self.sides)) // 2
+        return len(self.nodes) + links * (order - 1) + m * (order - 1) * (order - 2) // 2
+
+    @cached_property
     def side_bulge(self) -> Floats:
         """``tan(sweep / 4)`` of each boundary side, shape (s,); 0 is straight."""
         share = self.side_span[:, 1] - self.side_span[:, 0]

@@ -59,6 +59,13 @@ class Edges:
         return arcs.arc_radius(self.start, self.end, self.bulge)
 
     @cached_property
+    def loop_area(self) -> Floats:
+        """Signed area inside each loop (length**2), negative for voids; shape (loops,)."""
+        p, q = self.start - self.start.mean(axis=0), self.end - self.start.mean(axis=0)
+        parts = 0.5 * (p[:, 0] * q[:, 1] - p[:, 1] * q[:, 0]) + arcs.segment_area(p, q, self.bulge)
+        return np.bincount(self.loop, parts)
+
+    @cached_property
     def interior_angle(self) -> Floats:
         """Angle of the material (radians, 0 to 2 pi) at the start of each edge, shape (e,)."""
         ones = np.ones(len(self))
@@ -113,8 +120,7 @@ def edges_of(outline: Outline) -> Edges:
             vertex = -index % n
             start, end = loop.vertices[vertex], loop.vertices[(vertex - 1) % n]
             bulge = -loop.bulges[(vertex - 1) % n]
-        blocks.append(
-            (start, end, bulge, np.full(n, number), vertex, offset + (index + 1) % n, offset + (index - 1) % n)
-        )
+        after, before = offset + (index + 1) % n, offset + (index - 1) % n
+        blocks.append((start, end, bulge, np.full(n, number), vertex, after, before))
         offset += n
     return Edges(*(np.concatenate(parts) for parts in zip(*blocks, strict=True)))

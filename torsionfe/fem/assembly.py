@@ -1,0 +1,136 @@
+"""Stiffness matrix, loads and energies, vectorised over the elements.
+
+The integrals are those of Saint-Venant's torsion (Timoshenko and Goodier, *Theory of Elasticity*, ch. 10): with
+``p = (y, -x)``,
+
+    K_ij = int grad N_i . grad N_j,   load_i = int N_i,   twist_i = int p . grad N_i
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.sparse import coo_array, csr_array
+
+from torsionfe.checks import Floats
+from torsionfe.fem.elements import Element
+from torsionfe.fem.geometry import Patch, patches
+from torsionfe.fem.space import Space
+
+__all__ = ["Energies", "System", "assemble", "energies", "gradients", "turned"]
+
+
+@dataclass(frozen=True)
+class System:
+    """The assembled problem on one space.
+
+    Attributes
+    ----------
+    space : Space
+    patches : list of Patch
+        Geometry at the quadrature points, kept for the energies.
+    stiffness : sparse array of shape (n, n)
+        ``int grad N_i . grad N_j``.
+    load : ndarray of shape (n,)
+        ``int N_i``, length**2.
+    twist : ndarray of shape (n,)
+        ``int (y dN_i/dx - x dN_i/dy)``, length**2.
+    """
+
+    space: Space
+    patches: list[Patch]
+    stiffness: csr_array
+    load: Floats
+    twist: Floats
+
+
+@dataclass(frozen=True)
+class Energies:
+    """Integrals over each triangle (length**4), each of shape (m,).
+
+    Attributes
+    ----------
+    phi : ndarray
+        ``int |grad phi|^2``.
+    omega : ndarray
+        ``int |tau_omega|^2``.
+    gap : ndarray
+        ``int |tau_phi - tau_omega|^2``.
+    """
+
+    phi: Floats
+    omega: Floats
+    gap: Floats
+
+
+def assemble(space: Space) -> System:
+    """Return stiffness and loads of a space, exact on straight triangles, to rounding on curved ones."""
+    parts = patches(space.mesh, space.order)
+    n = space.size
+    index = np.int32 if n < 2**31 else np.int64
+    rows, columns, entries = [], [], []
+    load, twist = np.zeros(n), np.zeros(n)
+    for patch in parts:
+        dofs = space.dofs[patch.triangles]
+        b = dofs.shape[1]
+        entries.append(_stiffness(space.element, patch).ravel())
+        rows.append(np.repeat(dofs.astype(index), b, axis=1).ravel())
+        columns.append(np.tile(dofs.astype(index), (1, b)).ravel())
+        values = space.element.values(patch.rule.points)
+        load += np.bincount(dofs.ravel(), (patch.weights @ values).ravel(), n)
+        twist += np.bincount(dofs.ravel(), _twist(space.element, patch).ravel(), n)
+    where = (np.concatenate(rows), np.concatenate(columns))
+    return System(space, parts, coo_array((np.concatenate(entries), where), shape=(n, n)).tocsr(), load, twist)
+
+
+def _stiffness(element: Element, patch: Patch) -> Floats:
+    """Return the element matrices ``(k, b * b)`` as one matrix product over metric and reference parts."""
+    slopes = element.gradients(patch.rule.points)
+    pairs = np.einsum("qai,qbj->qijab", slopes, slopes)
+    # metric[..., i, j] = sum over x of inverse[i, x] inverse[j, x], symmetric: 3 numbers a point
+    metric = np.einsum("kqix,kqjx->kqij", patch.inverse, patch.inverse)
+    three = np.stack([metric[..., 0, 0], metric[..., 0, 1], metric[..., 1, 1]], axis=2)
+    parts = np.stack([pairs[:, 0, 0], pairs[:, 0, 1] + pairs[:, 1, 0], pairs[:, 1, 1]], axis=1)
+    b = slopes.shape[1]
+    if patch.inverse.shape[1] == 1:
+        weight = patch.rule.weights
+        jacobian = patch.weights[:, 0] / weight[0]
+        summed = np.tensordot(weight, parts, axes=1).reshape(3, b * b)
+        return np.asarray((three[:, 0] * jacobian[:, None]) @ summed, dtype=float)
+    weighted = three * patch.weights[..., None]
+    return np.asarray(weighted.reshape(len(three), -1) @ parts.reshape(-1, b * b), dtype=float)
+
+
+def turned(points: Floats) -> Floats:
+    """Return ``(y, -x)`` of points ``(..., 2)``: minus the stress of a section that does not warp."""
+    return np.stack([points[..., 1], -points[..., 0]], axis=-1)
+
+
+def _twist(element: Element, patch: Patch) -> Floats:
+    """Return ``int (y, -x) . grad N`` of each element, shape (k, b)."""
+    slopes = element.gradients(patch.rule.points)
+    along = np.einsum("kqrx,kqx->kqr", np.broadcast_to(patch.inverse, (*patch.weights.shape, 2, 2)), turned(patch.points))
+    weighted = (along * patch.weights[..., None]).reshape(len(along), -1)
+    return np.asarray(weighted @ slopes.transpose(0, 2, 1).reshape(-1, slopes.shape[1]), dtype=float)
+
+
+def gradients(space: Space, patch: Patch, field: Floats) -> Floats:
+    """Return the gradient of a field at a patch's quadrature points, shape (k, q, 2)."""
+    slopes = space.element.gradients(patch.rule.points)
+    q, b = slopes.shape[:2]
+    local = field[space.dofs[patch.triangles]] @ slopes.transpose(1, 0, 2).reshape(b, 2 * q)
+    return np.asarray((local.reshape(-1, q, 1, 2) @ patch.inverse)[..., 0, :], dtype=float)
+
+
+def energies(system: System, phi: Floats, omega: Floats) -> Energies:
+    """Return the energies of both stress fields, and of their difference, triangle by triangle."""
+    m = len(system.space.mesh.triangles)
+    result = Energies(np.empty(m), np.empty(m), np.empty(m))
+    for patch in system.patches:
+        grad = gradients(system.space, patch, phi)
+        tau_phi = np.stack([grad[..., 1], -grad[..., 0]], axis=-1)
+        tau_omega = gradients(system.space, patch, omega) - turned(patch.points)
+        for name, tau in (("phi", tau_phi), ("omega", tau_omega), ("gap", tau_phi - tau_omega)):
+            getattr(result, name)[patch.triangles] = np.einsum("kqx,kqx,kq->k", tau, tau, patch.weights)
+    return result
