@@ -1,0 +1,1 @@
+"""Lagrange elements of any order on true arcs: spaces, assembly, sparse solves."""

@@ -9,14 +9,17 @@ The integrals are those of Saint-Venant's torsion (Timoshenko and Goodier, *Theo
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
-from scipy.sparse import coo_array, csr_array
 
 from torsionfe.checks import Floats
 from torsionfe.fem.elements import Element
 from torsionfe.fem.geometry import Patch, patches
 from torsionfe.fem.space import Space
+
+if TYPE_CHECKING:
+    from scipy.sparse import csr_array
 
 __all__ = ["Energies", "System", "assemble", "energies", "gradients", "turned"]
 
@@ -66,6 +69,8 @@ class Energies:
 
 def assemble(space: Space) -> System:
     """Return stiffness and loads of a space, exact on straight triangles, to rounding on curved ones."""
+    from scipy.sparse import coo_array
+
     parts = patches(space.mesh, space.order)
     n = space.size
     index = np.int32 if n < 2**31 else np.int64
@@ -110,7 +115,7 @@ def turned(points: Floats) -> Floats:
 def _twist(element: Element, patch: Patch) -> Floats:
     """Return ``int (y, -x) . grad N`` of each element, shape (k, b)."""
     slopes = element.gradients(patch.rule.points)
-    along = np.einsum("kqrx,kqx->kqr", np.broadcast_to(patch.inverse, (*patch.weights.shape, 2, 2)), turned(patch.points))
+    along = (patch.inverse @ turned(patch.points)[..., None])[..., 0]
     weighted = (along * patch.weights[..., None]).reshape(len(along), -1)
     return np.asarray(weighted @ slopes.transpose(0, 2, 1).reshape(-1, slopes.shape[1]), dtype=float)
 

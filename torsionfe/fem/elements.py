@@ -10,7 +10,6 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
-from scipy.special import roots_jacobi
 
 from torsionfe.checks import Floats, Ints
 
@@ -75,7 +74,7 @@ def element(order: int) -> Element:
     lattice = [(i / order, j / order) for j in range(1, order) for i in range(1, order - j)]
     nodes = np.concatenate([corners, *sides, np.array(lattice).reshape(-1, 2)])
     powers = np.array([(i, d - i) for d in range(order + 1) for i in range(d, -1, -1)])
-    return Element(order, nodes, powers, np.linalg.inv(_monomials(nodes, powers)))
+    return Element(order, nodes, powers, np.asarray(np.linalg.inv(_monomials(nodes, powers)), dtype=float))
 
 
 # Dunavant (1985), Int. J. Numer. Meth. Eng. 21, 1129-1148: (barycentric pair, weight) of each 3-point orbit
@@ -92,20 +91,19 @@ _ORBITS = {
 def rule(degree: int) -> Rule:
     """Return a quadrature rule exact for polynomials of the given degree.
 
-    Symmetric rules (Dunavant 1985) for degrees up to 4, beyond that the conical product of Gauss-Jacobi
-    points (Stroud 1971, *Approximate Calculation of Multiple Integrals*, sec. 2.6).
+    Symmetric rules (Dunavant 1985) for degrees up to 4, beyond that the conical product of Gauss points
+    (Stroud 1971, *Approximate Calculation of Multiple Integrals*, sec. 2.6).
     """
     if degree <= 4:
         orbits = _ORBITS[2 if degree <= 2 else 4]
         points = [p for a, _ in orbits for p in ((a, a), (1.0 - 2.0 * a, a), (a, 1.0 - 2.0 * a))]
         share = np.repeat([w for _, w in orbits], 3)
         return Rule(np.array(points), 0.5 * share / share.sum())
-    n = degree // 2 + 1
-    x, wx = roots_jacobi(n, 0.0, 0.0)
-    y, wy = roots_jacobi(n, 1.0, 0.0)
+    x, wx = np.polynomial.legendre.leggauss(degree // 2 + 1)
+    y, wy = np.polynomial.legendre.leggauss((degree + 1) // 2 + 1)  # one degree more for the cone's width
     u, v = np.meshgrid(0.5 * (1.0 + x), 0.5 * (1.0 + y), indexing="ij")
-    weights = (wx[:, None] * wy[None, :] / 8.0).ravel()
-    return Rule(np.stack([(u * (1.0 - v)).ravel(), v.ravel()], axis=1), weights)
+    weights = 0.25 * wx[:, None] * wy * (1.0 - v)
+    return Rule(np.stack([(u * (1.0 - v)).ravel(), v.ravel()], axis=1), weights.ravel())
 
 
 @cache

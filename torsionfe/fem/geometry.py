@@ -173,5 +173,5 @@ def _curved(mesh: TriMesh, which: Ints, sides: Ints, order: int) -> Patch:
     inverse, det = inverted(jacobian)
     if det.min() <= 0.0:
         x, y = mesh.nodes[mesh.triangles[which[np.argmin(det.min(axis=1))]]].mean(axis=0)
-        raise MeshError(f"the arc at ({x:g}, {y:g}) bends its triangle inside out: the mesh is too coarse there", (x, y))
+        raise MeshError(f"the arc at ({x:g}, {y:g}) bends its triangle inside out: split that arc", (x, y))
     return Patch(which, quadrature, points, inverse, det * quadrature.weights)

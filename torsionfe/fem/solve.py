@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import numpy as np
-from scipy.sparse import coo_array, csc_array, csr_array
-from scipy.sparse.linalg import splu
 
 from torsionfe.checks import Floats, Ints
 from torsionfe.errors import SolveError
+
+if TYPE_CHECKING:
+    from scipy.sparse import csr_array
 
 __all__ = ["reduced", "solve_constrained", "solve_positive"]
 
@@ -23,11 +26,12 @@ def reduced(stiffness: csr_array, unknown: Ints, count: int) -> csr_array:
     count : int
         Number of unknowns.
     """
+    from scipy.sparse import coo_array
+
     entries = stiffness.tocoo()
     row, column = unknown[entries.row], unknown[entries.col]
     kept = (row >= 0) & (column >= 0)
-    index = np.int32 if count < 2**31 else np.int64
-    where = (row[kept].astype(index), column[kept].astype(index))
+    where = (row[kept].astype(np.int32), column[kept].astype(np.int32))
     return coo_array((entries.data[kept], where), shape=(count, count)).tocsr()
 
 
@@ -49,7 +53,7 @@ def solve_constrained(stiffness: csr_array, load: Floats, unknown: Ints) -> Floa
     if count == 0:  # one triangle, every node on the boundary
         return np.zeros(len(load))
     free = unknown >= 0
-    right = np.bincount(unknown[free], load[free], count)
+    right = np.asarray(np.bincount(unknown[free], load[free], count), dtype=float)
     solution = solve_positive(reduced(stiffness, unknown, count), right)
     return np.asarray(np.where(free, solution[unknown], 0.0), dtype=float)
 
@@ -62,6 +66,9 @@ def solve_positive(matrix: csr_array, right: Floats) -> Floats:
     SolveError
         The matrix is singular to working precision.
     """
+    from scipy.sparse import csc_array
+    from scipy.sparse.linalg import splu
+
     # the matrix is symmetric, so its rows serve as columns
     columns = csc_array((matrix.data, matrix.indices, matrix.indptr), shape=matrix.shape)
     try:

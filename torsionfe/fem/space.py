@@ -5,8 +5,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
-from torsionfe.checks import Floats, Ints
+from torsionfe.checks import Ints
 from torsionfe.fem.elements import Element, element
 from torsionfe.mesh.trimesh import TriMesh
 
@@ -57,7 +58,7 @@ def space_of(mesh: TriMesh, order: int) -> Space:
     return Space(mesh, element(order), np.concatenate(blocks, axis=1), side_dofs, start + m * inside)
 
 
-def _on_links(offset: int, link: Ints, backwards: Floats, inner: Ints) -> Ints:
+def _on_links(offset: int, link: Ints, backwards: NDArray[np.bool_], inner: Ints) -> Ints:
     """Return the inner degrees of freedom of links, in the direction in which they are walked."""
     along = np.where(backwards[:, None], inner[::-1], inner)
     return np.asarray(offset + link[:, None] * len(inner) + along, dtype=np.int64)

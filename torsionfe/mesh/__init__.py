@@ -1,0 +1,1 @@
+"""Triangulation of an outline and its local refinement."""

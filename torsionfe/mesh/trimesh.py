@@ -65,7 +65,7 @@ class TriMesh:
         """The link of each boundary side, shape (s,)."""
         n = np.int64(len(self.nodes))
         key = self.sides.min(axis=1) * n + self.sides.max(axis=1)
-        return np.searchsorted(self.links[:, 0] * n + self.links[:, 1], key)
+        return np.asarray(np.searchsorted(self.links[:, 0] * n + self.links[:, 1], key))
 
     @cached_property
     def side_triangle(self) -> tuple[Ints, Ints]:

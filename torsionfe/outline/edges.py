@@ -63,7 +63,7 @@ class Edges:
         """Signed area inside each loop (length**2), negative for voids; shape (loops,)."""
         p, q = self.start - self.start.mean(axis=0), self.end - self.start.mean(axis=0)
         parts = 0.5 * (p[:, 0] * q[:, 1] - p[:, 1] * q[:, 0]) + arcs.segment_area(p, q, self.bulge)
-        return np.bincount(self.loop, parts)
+        return np.asarray(np.bincount(self.loop, parts), dtype=float)
 
     @cached_property
     def interior_angle(self) -> Floats:

@@ -1,0 +1,1 @@
+"""Figures, sheets and files for reports."""

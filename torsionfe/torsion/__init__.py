@@ -1,0 +1,1 @@
+"""The torsion problem: fields, bounds, adaptive loop, hot spot, the solution."""

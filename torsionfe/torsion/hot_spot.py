@@ -165,7 +165,7 @@ def tied_peaks(stress: BoundaryStress, peak: Peak, rel_error: Floats) -> list[in
 def _regions(stress: BoundaryStress, high: NDArray[np.bool_]) -> Ints:
     """Return a number for each side: the same for sides joined along the loop by sides that are all high."""
     before, _ = _loop_neighbours(stress)
-    number = np.cumsum(~(high & high[before]))
+    number: Ints = np.cumsum(~(high & high[before]), dtype=np.int64)
     # a stretch that passes the loop's first side has its end joined to its beginning
     loop = stress.mesh.edges.loop[stress.edge]
     for first in np.flatnonzero(np.diff(loop, prepend=-1)):

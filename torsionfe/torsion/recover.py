@@ -71,7 +71,7 @@ def stress_at_reference(fields: Fields, triangle: Ints, reference: Floats) -> Fl
     slopes = fields.space.element.gradients(reference)
     dofs = fields.space.dofs[triangle]
     grad = [np.einsum("kb,kbr,krx->kx", field[dofs], slopes, inverse) for field in (fields.phi, fields.omega)]
-    return 0.5 * (np.stack([grad[0][:, 1], -grad[0][:, 0]], axis=1) + grad[1] - turned(points))
+    return np.asarray(0.5 * (np.stack([grad[0][:, 1], -grad[0][:, 0]], axis=1) + grad[1] - turned(points)))
 
 
 def stress_in_triangles(fields: Fields, reference: Floats) -> tuple[Floats, Floats]:

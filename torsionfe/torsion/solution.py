@@ -20,7 +20,8 @@ from torsionfe.torsion.bounds import Bounds
 from torsionfe.torsion.corners import sharp_corners
 from torsionfe.torsion.fields import Fields
 from torsionfe.torsion.frame import Frame
-from torsionfe.torsion.hot_spot import HotSpot, Peak, plateau_share, tied_peaks
+from torsionfe.torsion.hot_spot import HotSpot, plateau_share, tied_peaks
+from torsionfe.torsion.look import Look
 from torsionfe.torsion.recover import locate, stress_at_reference
 from torsionfe.torsion.warping import Warping, normalised_warping
 
@@ -70,8 +71,12 @@ class TorsionSolution:
         Sharp re-entrant corners, where the elastic stress is unbounded.
     converged : bool
         Whether both tolerances were met.
+    shortfall : str
+        What is still wider than asked, in words; empty where nothing is.
     passes : tuple of Pass
         The adaptive loop, coarse to fine.
+    frame, fields, boundary
+        The solver's coordinates, both functions and the boundary stress in them: for plots and further work.
     """
 
     outline: Outline
@@ -87,35 +92,26 @@ class TorsionSolution:
 
     @classmethod
     def of(
-        cls,
-        outline: Outline,
-        frame: Frame,
-        fields: Fields,
-        boundary: BoundaryStress,
-        peak: Peak,
-        rel_error: Floats,
-        passes: tuple[Pass, ...],
-        shortfall: str,
+        cls, outline: Outline, frame: Frame, look: Look, passes: tuple[Pass, ...], shortfall: str
     ) -> TorsionSolution:
-        """Return the result in the outline's own coordinates and unit."""
-        bounds = Bounds(fields.lower, fields.upper)
-        edges = outline.edges
+        """Return the result of the last look, in the outline's own coordinates and unit."""
+        bounds = Bounds(look.fields.lower, look.fields.upper)
         spots = []
-        for k in tied_peaks(boundary, peak, rel_error):
-            x, y = frame.outward_points(peak.points[k])
-            per_torque = peak.tau[k] / bounds.value / frame.scale**3
-            spots.append(HotSpot(float(x), float(y), float(per_torque), float(rel_error[k]) + 0.5 * bounds.rel_gap))
+        for k in tied_peaks(look.boundary, look.peak, look.rel_error):
+            x, y = (float(value) for value in frame.outward_points(look.peak.points[k]))
+            per_torque = float(look.peak.tau[k]) / bounds.value / frame.scale**3
+            spots.append(HotSpot(x, y, per_torque, float(look.rel_error[k]) + 0.5 * bounds.rel_gap))
         return cls(
-            outline,
-            frame,
-            fields,
-            boundary,
-            bounds.scaled(frame.scale**4),
-            tuple(spots),
-            edges.start[sharp_corners(edges)],
-            not shortfall,
-            shortfall,
-            passes,
+            outline=outline,
+            frame=frame,
+            fields=look.fields,
+            boundary=look.boundary,
+            torsion_constant=bounds.scaled(frame.scale**4),
+            hot_spots=tuple(spots),
+            singular_corners=outline.edges.start[sharp_corners(outline.edges)],
+            converged=not shortfall,
+            shortfall=shortfall,
+            passes=passes,
         )
 
     # --- numbers --------------------------------------------------------------------------------------

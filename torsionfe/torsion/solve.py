@@ -3,37 +3,22 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
 
-from torsionfe.checks import Floats, Ints, positive
+from torsionfe.checks import Ints, positive
 from torsionfe.errors import InputError
 from torsionfe.mesh.triangulate import triangulate
-from torsionfe.mesh.trimesh import TriMesh
 from torsionfe.outline.outline import Outline
 from torsionfe.torsion.adaptive import around_peaks, refined
 from torsionfe.torsion.bounds import Bounds
-from torsionfe.torsion.boundary import BoundaryStress, boundary_stress
-from torsionfe.torsion.fields import Fields, solve_fields
-from torsionfe.torsion.hot_spot import Peak, find_peaks
 from torsionfe.torsion.frame import Frame
+from torsionfe.torsion.look import Look, look_at
 from torsionfe.torsion.solution import Pass, TorsionSolution
 
 __all__ = ["solve_torsion"]
 
 _MOST_PASSES = 40
-_SETTLING = 0.5  # the doubt about a peak is this share of what its samples and its last change show
-
-
-@dataclass(frozen=True)
-class _Look:
-    """One mesh, solved and looked at."""
-
-    fields: Fields
-    stress: BoundaryStress
-    peak: Peak
-    rel_error: Floats  # of each peak
 
 
 def solve_torsion(
@@ -76,7 +61,7 @@ def solve_torsion(
     trail: list[Pass] = []
     look = None
     while True:
-        look = _look(mesh, order, look)
+        look = look_at(mesh, order, look)
         trail.append(_pass(look, frame))
         shortfall = _shortfall(look, tolerance, peak_wanted)
         if not shortfall or len(trail) == _MOST_PASSES:
@@ -85,12 +70,10 @@ def solve_torsion(
         if mesh.unknowns(order) > max_unknowns:
             shortfall += f" within {max_unknowns} unknowns"
             break
-    return TorsionSolution.of(
-        outline, frame, look.fields, look.stress, look.peak, look.rel_error, tuple(trail), shortfall
-    )
+    return TorsionSolution.of(outline, frame, look, tuple(trail), shortfall)
 
 
-def _shortfall(look: _Look, tolerance: float, peak_wanted: float) -> str:
+def _shortfall(look: Look, tolerance: float, peak_wanted: float) -> str:
     """Return what is still wider than asked, in words; empty where nothing is."""
     gap = Bounds(look.fields.lower, look.fields.upper).rel_gap
     parts = []
@@ -119,22 +102,7 @@ def _checked(
     return tolerance, peak
 
 
-def _look(mesh: TriMesh, order: int, before: _Look | None) -> _Look:
-    fields = solve_fields(mesh, order)
-    stress = boundary_stress(fields)
-    peak = find_peaks(stress)
-    return _Look(fields, stress, peak, _peak_error(peak, before))
-
-
-def _peak_error(peak: Peak, before: _Look | None) -> Floats:
-    """Return the relative error of each peak: what its samples leave open, and its change since the last mesh."""
-    if before is None or not len(before.peak.tau) or not len(peak.tau):
-        return np.full(len(peak.tau), 1.0)
-    change = abs(peak.tau[0] - before.peak.tau[0]) / peak.tau[0]
-    return np.maximum(peak.doubt, _SETTLING * change)
-
-
-def _forced(look: _Look, wanted: float) -> Ints:
+def _forced(look: Look, wanted: float) -> Ints:
     """Return the bisections that the peaks ask for, triangle by triangle."""
     open_ = look.rel_error > wanted
     if not open_.any():
@@ -142,10 +110,10 @@ def _forced(look: _Look, wanted: float) -> Ints:
     # the error of the samples falls about as h**(p + 1), h as 2**(-rounds / 2)
     ratio = np.minimum(look.rel_error[open_], 1.0) / wanted
     rounds = np.clip(np.ceil(2.0 * np.log2(ratio) / (look.fields.space.order + 1)), 2, 4).astype(np.int64)
-    return around_peaks(look.stress, look.peak.side[open_], rounds)
+    return around_peaks(look.boundary, look.peak.side[open_], rounds)
 
 
-def _pass(look: _Look, frame: Frame) -> Pass:
+def _pass(look: Look, frame: Frame) -> Pass:
     f = look.fields
     s4 = frame.scale**4
     tau = float(look.peak.tau[0]) if len(look.peak.tau) else math.nan
