@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from shapely import LineString, MultiPoint, Polygon
@@ -23,11 +23,12 @@ from torsionfe.text import number, percent
 __all__ = ["DERIVED", "derive_plates"]
 
 #: The idealisations that can be derived from an outline.
-DERIVED = ("centreline", "full_depth", "straight_through")
+DERIVED = ("centreline", "full_depth", "straight_through", "web_through")
 
 _FILLED = 0.85  # of its rectangle a plate must fill
 _WHOLE = 0.95  # of its bounding rectangle a section must fill to be one plate
 _STUBBY = 0.8  # of its thickness: a plate must be at least as wide
+_COVERED = 0.9  # of the area: below, a note says so
 _TAPERED = 1.05  # largest to smallest thickness: from here on a note says so
 
 
@@ -44,7 +45,8 @@ def derive_plates(
     ----------
     outline : Outline
     idealisation : str
-        ``'centreline'``, ``'full_depth'`` or ``'straight_through'``: see `IDEALISATIONS`.
+        ``'centreline'``, ``'full_depth'``, ``'straight_through'`` or ``'web_through'``: see
+        `IDEALISATIONS`.
     taper : float
         Slope of one face against the other up to which a stretch still counts as a plate.
 
@@ -67,7 +69,7 @@ def derive_plates(
         if whole is not None:
             found = whole
     voids = len(outline.voids)
-    return DerivedPlates(
+    derived = DerivedPlates(
         plates=tuple(Plate(_length(found.lines[k]), found.thickness[k]) for k in found.kept),
         idealisation=idealisation,
         meaning=IDEALISATIONS[idealisation],
@@ -78,6 +80,7 @@ def derive_plates(
         closed=cells_around_voids(circles, runs, voids) if voids else None,
         cell_lines=tuple(circles.centre[middle_line(circles, k + 1)] for k in range(voids)),
     )
+    return replace(derived, notes=derived.notes + tuple(_doubts(derived)))
 
 
 @dataclass(frozen=True)
@@ -90,14 +93,19 @@ class _Found:
     thickness: list[float]
     filled: list[float]
     kept: list[int]
+    halves: frozenset[int] = frozenset()
 
 
 def _found(strips: list[Strip], polygon: Polygon, size: float, idealisation: str) -> _Found:
     walls = [strip for strip in strips if strip.loops[0] != strip.loops[1]]
-    open_strips = merged([strip for strip in strips if strip.loops[0] == strip.loops[1]], polygon)
-    open_strips.sort(key=lambda strip: -strip.length * strip.thickness)
+    groups = merged([strip for strip in strips if strip.loops[0] == strip.loops[1]], polygon)
+    divided = _divided(groups, idealisation)
+    open_strips = [strip for k, (strip, _) in enumerate(groups) if k not in divided]
+    parts = [part for k in divided for part in groups[k][1]]
+    open_strips = sorted(open_strips + parts, key=lambda strip: -strip.length * strip.thickness)
+    halves = frozenset(k for k, strip in enumerate(open_strips) if any(strip is part for part in parts))
     ends = endings(open_strips + walls, polygon, size)[: len(open_strips)]
-    found = _Found(open_strips, ends, [], [], [], [])
+    found = _Found(open_strips, ends, [], [], [], [], halves)
     for k, strip in enumerate(open_strips):
         reach = _reach(k, 0, found, idealisation), _reach(k, 1, found, idealisation)
         line, thickness = extended(strip.line, reach), strip.thickness_beyond(reach)
@@ -111,26 +119,49 @@ def _found(strips: list[Strip], polygon: Polygon, size: float, idealisation: str
     return found
 
 
+def _divided(groups: list[tuple[Strip, list[Strip]]], idealisation: str) -> list[int]:
+    """Return which of the strips that were joined across a joint are parted there again.
+
+    Where a web runs through, that is its flanges. Of two plates that cross, it is the smaller, or, where a
+    web runs through, the larger.
+    """
+    if not idealisation.endswith("through"):
+        return []
+    web = idealisation == "web_through"
+    joined = [k for k, (_, parts) in enumerate(groups) if len(parts) > 1]
+    joined.sort(key=lambda k: groups[k][0].length * groups[k][0].thickness, reverse=not web)
+    lines = {k: LineString(groups[k][0].line) for k in joined}
+    parted: list[int] = []
+    for index, k in enumerate(joined):
+        crossed = [j for j in joined if j != k and lines[j].intersects(lines[k])]
+        behind = any(j in joined[:index] and j not in parted for j in crossed)
+        if behind or (web and not crossed):
+            parted.append(k)
+    return parted
+
+
 def _reach(k: int, end: int, found: _Found, idealisation: str) -> float:
     """Return how far plate ``k`` runs beyond its strip's end, by the idealisation."""
     ending = found.ends[k][end]
     if ending.kind != "joint" or idealisation == "centreline":
         return ending.to_end
-    if idealisation == "straight_through" and not _runs_through(k, ending, found):
+    if idealisation.endswith("through") and not _runs_through(k, ending, found, idealisation):
         return ending.to_end - ending.half
     return min(ending.to_exit, ending.to_end + ending.half)
 
 
-def _runs_through(k: int, ending: Ending, found: _Found) -> bool:
-    """Say whether, at a corner, plate ``k`` is the one that runs through: a flange before a web."""
+def _runs_through(k: int, ending: Ending, found: _Found, idealisation: str) -> bool:
+    """Say whether, where two plates end at a joint, plate ``k`` is the one that runs through."""
     if ending.passes or ending.other >= len(found.strips):
         return False
 
-    def rank(j: int) -> tuple[int, float, int]:
+    def flange(j: int) -> tuple[bool, int, float, int]:
+        """Rank a flange before a web, and the longer leg before the shorter."""
         free = sum(one.kind == "free" for one in found.ends[j])
-        return free, round(found.strips[j].length / found.strips[j].thickness, 6), -j
+        return j in found.halves, free, round(found.strips[j].length / found.strips[j].thickness, 6), -j
 
-    return rank(k) > rank(ending.other)
+    first = flange(k) > flange(ending.other)
+    return first if idealisation == "straight_through" else not first
 
 
 def _crossings(found: _Found) -> Iterator[tuple[int, int]]:
@@ -178,6 +209,13 @@ def _joints(found: _Found) -> Iterator[Joint]:
                 continue
             seen.add(pair)
             yield Joint(place[k], other, ending.at, kind)
+
+
+def _doubts(derived: DerivedPlates) -> Iterator[str]:
+    if not derived.plates and derived.closed is None:
+        yield "no part of the section is a plate: the sum of thin plates does not apply"
+    elif derived.covered < _COVERED:
+        yield f"plates and walls cover only {percent(derived.covered)} of the area: look at the rest"
 
 
 def _notes(found: _Found, voids: int) -> Iterator[str]:

@@ -117,10 +117,13 @@ class DerivedPlates(PlateSet):
     @property
     def unplated(self) -> tuple[Unplated, ...]:
         """The regions that no plate stands for, the largest first; those under 0.5 % are left out."""
-        area = self._section.area
-        pieces = sorted((p for p in self._left_over if p.area >= _SMALLEST * area), key=lambda p: -p.area)
-        places = [(piece.representative_point(), piece.area / area) for piece in pieces]
-        return tuple(Unplated((place.x, place.y), share) for place, share in places)
+        places = [(piece.representative_point(), piece.area) for piece in self.unplated_regions()]
+        return tuple(Unplated((place.x, place.y), area / self._section.area) for place, area in places)
+
+    def unplated_regions(self) -> list[Polygon]:
+        """Return the same regions as shapely polygons, to be drawn."""
+        least = _SMALLEST * self._section.area
+        return sorted((p for p in self._left_over if p.area >= least), key=lambda p: -p.area)
 
     def without(self, index: int) -> DerivedPlates:
         """Return a copy without one plate."""

@@ -16,16 +16,17 @@ IDEALISATIONS: Mapping[str, str] = MappingProxyType(
     {
         "centreline": "each plate from the middle of the plate that it meets to its own end",
         "full_depth": "each plate over its full outside length, joints counted twice",
-        "straight_through": "flanges, or the longer leg, run straight through; the rest is attached to them",
-        "web_through": "the web, or the shorter leg, runs straight through; the rest is attached to it",
+        "straight_through": "flanges, or the longer leg, run straight through; the rest ends at their faces",
+        "web_through": "the web, or the shorter leg, runs straight through; the rest ends at its faces",
         "developed": "one strip, as long as the centre line",
     }
 )
 
 #: The trade shapes that are sets of plates.
-PLATE_KINDS = ("rectangle", "angle", "tee", "channel", "zee", "wide_flange")
+PLATE_KINDS = ("rectangle", "angle", "tee", "channel", "zee", "wide_flange", "plate_girder", "cross")
 
 _WHOLE = "the section is one rectangle"
+_HOLLOW = ("tube", "box", "finned_box", "multi_cell", "extrusion")
 
 
 def plates_of(kind: str, dimensions: Mapping[str, float], idealisation: str = "centreline") -> PlateSet:
@@ -73,13 +74,24 @@ def idealisations(kind: str, dimensions: Mapping[str, float]) -> dict[str, Plate
         The shape is no set of plates, or a dimension is missing.
     """
     if kind not in PLATE_KINDS:
-        cells = " It is a thin-walled cell: see thin_cells_of." if kind in ("tube", "box") else ""
+        cells = " It is made of thin-walled cells: see thin_cells_of." if kind in _HOLLOW else ""
         raise InputError(
             f"a {_words(str(kind))} is no set of plates; those that are: {', '.join(PLATE_KINDS)}.{cells}"
         )
     found = _BY_KIND[kind](_Sizes(kind, dimensions))
     meanings = dict.fromkeys(IDEALISATIONS, _WHOLE) if kind == "rectangle" else IDEALISATIONS
-    return {name: PlateSet(tuple(plates), name, meanings[name]) for name, plates in found.items()}
+    return {
+        name: PlateSet(tuple(plates), name, meanings[name], _remarks(kind, dimensions, name))
+        for name, plates in found.items()
+    }
+
+
+def _remarks(kind: str, dimensions: Mapping[str, float], idealisation: str) -> tuple[str, ...]:
+    if dimensions.get("flange_slope"):
+        return ("the flanges taper: the thickness that the shape states is used",)
+    if kind == "cross" and not idealisation.endswith("through"):
+        return ("the two plates cross: where they do, the section is counted twice",)
+    return ()
 
 
 def _words(kind: str) -> str:
@@ -102,7 +114,7 @@ class _Sizes:
 def _rectangle(size: _Sizes) -> dict[str, list[Plate]]:
     width, height = size["width"], size["height"]
     plate = Plate(max(width, height), min(width, height), "rectangle")
-    return {name: [plate] for name in ("centreline", "full_depth", "straight_through")}
+    return {name: [plate] for name in IDEALISATIONS}
 
 
 def _angle(size: _Sizes) -> dict[str, list[Plate]]:
@@ -124,28 +136,53 @@ def _angle(size: _Sizes) -> dict[str, list[Plate]]:
 def _tee(size: _Sizes) -> dict[str, list[Plate]]:
     b, d, tf, tw = size["flange_width"], size["depth"], size["flange_thickness"], size["web_thickness"]
     flange = Plate(b, tf, "flange")
-    halves = [Plate((b - tw) / 2.0, tf, f"{side} flange") for side in ("left", "right")]
     return {
         "centreline": [flange, Plate(d - tf / 2.0, tw, "web")],
         "full_depth": [flange, Plate(d, tw, "web")],
         "straight_through": [flange, Plate(d - tf, tw, "web")],
-        "web_through": [Plate(d, tw, "web"), *halves],
+        "web_through": [Plate(d, tw, "web"), *_halves(flange, tw)],
     }
 
 
+def _halves(plate: Plate, gap: float, ends: tuple[str, str] = ("left", "right")) -> list[Plate]:
+    """Return what is left of a plate on both sides of one that runs through it."""
+    return [Plate((plate.width - gap) / 2.0, plate.thickness, f"{end} {plate.name}") for end in ends]
+
+
 def _wide_flange(size: _Sizes) -> dict[str, list[Plate]]:
-    b, d, tf, tw = size["flange_width"], size["depth"], size["flange_thickness"], size["web_thickness"]
+    b, tf = size["flange_width"], size["flange_thickness"]
     flanges = [Plate(b, tf, f"{end} flange") for end in ("top", "bottom")]
-    halves = [
-        Plate((b - tw) / 2.0, tf, f"{end} {side} flange")
-        for end in ("top", "bottom")
-        for side in ("left", "right")
-    ]
+    return _girder(flanges, size["depth"], size["web_thickness"])
+
+
+def _plate_girder(size: _Sizes) -> dict[str, list[Plate]]:
+    top = Plate(size["top_width"], size["top_thickness"], "top flange")
+    bottom = Plate(size["bottom_width"], size["bottom_thickness"], "bottom flange")
+    return _girder([top, bottom], size["depth"], size["web_thickness"])
+
+
+def _girder(flanges: list[Plate], depth: float, tw: float) -> dict[str, list[Plate]]:
+    both = sum(flange.thickness for flange in flanges)
+    halves = [half for flange in flanges for half in _halves(flange, tw)]
     return {
-        "centreline": [*flanges, Plate(d - tf, tw, "web")],
-        "full_depth": [*flanges, Plate(d, tw, "web")],
-        "straight_through": [*flanges, Plate(d - 2.0 * tf, tw, "web")],
-        "web_through": [Plate(d, tw, "web"), *halves],
+        "centreline": [*flanges, Plate(depth - both / 2.0, tw, "web")],
+        "full_depth": [*flanges, Plate(depth, tw, "web")],
+        "straight_through": [*flanges, Plate(depth - both, tw, "web")],
+        "web_through": [Plate(depth, tw, "web"), *halves],
+    }
+
+
+def _cross(size: _Sizes) -> dict[str, list[Plate]]:
+    level = Plate(size["width"], size["thickness"], "level plate")
+    upright = Plate(size["height"], size["upright_thickness"], "upright plate")
+    pieces = [level, *_halves(upright, level.thickness, ("top", "bottom"))]
+    others = [upright, *_halves(level, upright.thickness)]
+    larger = level.area >= upright.area
+    return {
+        "centreline": [level, upright],
+        "full_depth": [level, upright],
+        "straight_through": pieces if larger else others,
+        "web_through": others if larger else pieces,
     }
 
 
@@ -174,5 +211,7 @@ _BY_KIND: Mapping[str, Callable[[_Sizes], dict[str, list[Plate]]]] = MappingProx
         "channel": _channel,
         "zee": _channel,
         "wide_flange": _wide_flange,
+        "plate_girder": _plate_girder,
+        "cross": _cross,
     }
 )

@@ -51,20 +51,23 @@ class Ending:
     at: tuple[float, float] = (0.0, 0.0)
 
 
-def merged(strips: list[Strip], polygon: Polygon) -> list[Strip]:
-    """Return the strips with those joined that lie in one line with material between: a tee's flange."""
-    strips = list(strips)
+def merged(strips: list[Strip], polygon: Polygon) -> list[tuple[Strip, list[Strip]]]:
+    """Return the strips with those joined that lie in one line with material between, such as a tee's flange.
+
+    Each comes with the strips that it was made of.
+    """
+    groups = [(strip, [strip]) for strip in strips]
     k = 0
-    while k < len(strips):
-        for j in range(k + 1, len(strips)):
-            union = _in_one_line(strips[k], strips[j], polygon)
+    while k < len(groups):
+        for j in range(k + 1, len(groups)):
+            union = _in_one_line(groups[k][0], groups[j][0], polygon)
             if union is not None:
-                strips[k] = union
-                del strips[j]
+                groups[k] = union, groups[k][1] + groups[j][1]
+                del groups[j]
                 break
         else:
             k += 1
-    return strips
+    return groups
 
 
 def _in_one_line(a: Strip, b: Strip, polygon: Polygon) -> Strip | None:

@@ -23,6 +23,7 @@ __all__ = ["Circles", "inscribed_circles"]
 
 _FAN = np.radians(3.0)  # between the samples of a fan
 _SHARP = np.radians(5.0)  # a re-entrant corner that turns more gets a fan
+_CUSP = np.radians(60.0)  # circles whose two feet are seen at less are left out
 _NEAR = 1e-9  # of the size: nearer than this is the same point
 _MANY = 300  # edges: beyond, an outline is taken for chords, and samples need not fall on every edge
 _PAIRS = 6e6  # of samples and edges, at most
@@ -32,6 +33,9 @@ _CHUNK = 400_000
 @dataclass(frozen=True)
 class Circles:
     """Largest inscribed circles, one a boundary sample, in order along each loop.
+
+    Those whose two feet are close together are left out (in the cusp of a corner blunter than 120 degrees, or
+    filling a convex arc): they say nothing of a thickness.
 
     Attributes
     ----------
@@ -81,24 +85,25 @@ def inscribed_circles(outline: Outline, samples: int = 2400) -> Circles:
         _grown(edges, foot[k : k + per_chunk], normal[k : k + per_chunk], row[k : k + per_chunk], size)
         for k in range(0, len(foot), per_chunk)
     ]
-    radius, touch, touch_row, degenerate = (np.concatenate(column) for column in zip(*parts, strict=True))
+    radius, touch, touch_row, filled = (np.concatenate(column) for column in zip(*parts, strict=True))
     centre = foot + radius[:, None] * normal
     back, ahead = foot - centre, touch - centre
     cross = back[:, 0] * ahead[:, 1] - back[:, 1] * ahead[:, 0]
-    deviation = np.pi - np.abs(np.arctan2(cross, np.sum(back * ahead, axis=1)))
-    loop = edges.loop[row]
-    index = np.arange(len(foot))
+    apart = np.abs(np.arctan2(cross, np.sum(back * ahead, axis=1)))
+    # in the cusp of a blunt corner, or where a circle fills its own arc, it spans no two faces
+    kept = ~filled & (apart > _CUSP)
+    loop = edges.loop[row][kept]
     first = np.flatnonzero(np.diff(loop, prepend=-1))
-    following = index + 1
-    following[np.append(first[1:], len(foot)) - 1] = first
+    following = np.arange(1, len(loop) + 1)
+    following[np.append(first[1:], len(loop))[: len(first)] - 1] = first
     return Circles(
-        foot=foot,
-        touch=touch,
-        centre=centre,
-        radius=radius,
-        deviation=np.where(degenerate, np.pi, deviation),
+        foot=foot[kept],
+        touch=touch[kept],
+        centre=centre[kept],
+        radius=radius[kept],
+        deviation=np.pi - apart[kept],
         loop=loop,
-        touch_loop=edges.loop[touch_row],
+        touch_loop=edges.loop[touch_row][kept],
         following=following,
     )
 

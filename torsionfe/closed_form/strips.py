@@ -18,6 +18,7 @@ WALL_TAPER = 0.2
 _SHORTEST = 0.2  # of the thickness: a shorter stretch is no plate
 _STRAIGHT = 0.02  # of the thickness: how far a middle line may bow and still count as straight
 _SAME = 0.25  # of the thickness: two middle lines as near as this are one
+_FACE = np.radians(50.0)  # a face that turns more from sample to sample is two faces
 _TURNING = np.radians(12.0)
 _TRIM = np.radians(1.0)
 _PARALLEL = 1e-6  # radians
@@ -87,6 +88,9 @@ def find_runs(circles: Circles, taper: float = WALL_TAPER) -> Ints:
     stride = np.hypot(*(circles.foot[after] - circles.foot).T)
     jump = np.hypot(*(circles.centre[after] - circles.centre).T)
     joined = good & good[after] & (circles.touch_loop == circles.touch_loop[after])
+    normal = circles.centre - circles.foot
+    turn = np.sum(normal * normal[after], axis=1) / (circles.radius * circles.radius[after])
+    joined &= turn >= np.cos(_FACE)
     joined &= jump <= 3.0 * stride + 0.5 * thickness
     joined &= np.abs(thickness[after] - thickness) <= 2.0 * taper * stride + 0.02 * thickness
     return _chains(good, joined, after)
