@@ -199,24 +199,35 @@ def _misfits(edges: Edges, rows: Ints, radius: Floats) -> Ints:
 
 
 def _refuse_misfits(edges: Edges, rows: Ints, radius: Floats, names: list[str]) -> None:
-    if not len(_misfits(edges, rows, radius)):
+    """Raise where fillets do not fit, naming the largest of that name that would."""
+    misfits = _misfits(edges, rows, radius)
+    if not len(misfits):
         return
-    fits, fails = 0.0, 1.0  # by halving: the share of all radii that still fits
+    worst = int(misfits[np.argmax(radius[misfits])])
+    alike = np.array([name == names[worst] for name in names])
+    if len(_misfits(edges, rows, np.where(alike, 1e-6, 1.0) * radius)):
+        alike[:] = True  # the other radii alone are too much: all of them together
+    fits, fails = 0.0, 1.0  # by halving: the share of those radii that still fits
     for _ in range(50):
         middle = 0.5 * (fits + fails)
-        fits, fails = (fits, middle) if len(_misfits(edges, rows, middle * radius)) else (middle, fails)
-    worst = int(_misfits(edges, rows, fails * radius)[0])
-    row = int(rows[worst])
+        good = not len(_misfits(edges, rows, np.where(alike, middle, 1.0) * radius))
+        fits, fails = (middle, fails) if good else (fits, middle)
+    close = _misfits(edges, rows, np.where(alike, fails, 1.0) * radius)
+    worst = next((int(k) for k in close if names[k] == names[worst]), worst)
+    row, most = int(rows[worst]), _rounded_down(fits * radius[worst])
     x, y = edges.start[row]
     void = f" of void {edges.loop[row] - 1}" if edges.loop[row] else ""
-    # rounded down, so that the number in the message fits
-    step = 10.0 ** (np.floor(np.log10(fits * radius[worst])) - 4)
-    most = np.floor(fits * radius[worst] / step * (1.0 + _SLACK)) * step
     raise OutlineError(
         f"{names[worst]} {radius[worst]:g} does not fit at vertex {edges.vertex[row]}{void} ({x:g}, {y:g}): "
         f"the edges allow {most:.6g} at most",
         (float(x), float(y)),
     )
+
+
+def _rounded_down(value: float) -> float:
+    """Return a length with five digits that does not exceed it, so that the number in a message fits."""
+    step = 10.0 ** (np.floor(np.log10(value)) - 4) if value > 0.0 else 1.0
+    return float(np.floor(value / step * (1.0 + _SLACK)) * step)
 
 
 def _rounded(outline: Outline, edges: Edges, given: Mapping[int, tuple[float, str]]) -> Outline:

@@ -21,6 +21,8 @@ __all__ = ["CLEARANCE", "facets", "validate_loop", "validate_voids"]
 CLEARANCE = 1e-7
 _FACET = 1e-6
 _LARGEST_BULGE = 50.0
+_LARGEST = 1e40  # length**6 and its inverse must stay finite
+_FARTHEST = 1e8  # from the origin, in sizes: beyond, rounding exceeds the clearance
 _CUSP = np.radians(0.5)
 
 
@@ -62,9 +64,7 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
             f"{_LARGEST_BULGE:g}): split the arc in two",
             vertices[k],
         )
-    size = float(np.ptp(vertices, axis=0).max())
-    if size == 0.0:
-        raise _fail("every vertex is at {}: the outline has no size", vertices[0])
+    size = _checked_size(vertices)
     step = np.hypot(*(np.roll(vertices, -1, axis=0) - vertices).T)
     twins = np.flatnonzero(step <= CLEARANCE * size)
     if len(twins):
@@ -82,6 +82,29 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
         vertices, bulges = vertices[order], -bulges[(order - 1) % n]
     _refuse_cusps(vertices, bulges)
     return vertices.copy(), np.where(bulges == 0.0, 0.0, bulges)
+
+
+def _checked_size(vertices: Floats) -> float:
+    """Return the longer side of the vertices' extent, or raise where numbers cannot hold the outline."""
+    far = int(np.abs(vertices).max(axis=1).argmax())
+    reach = float(np.abs(vertices[far]).max())
+    if reach > _LARGEST:
+        raise _fail(f"a vertex at {{}} is too far out (at most {_LARGEST:g}): take a larger unit", vertices[far])
+    size = float(np.ptp(vertices, axis=0).max())
+    if size == 0.0:
+        raise _fail("every vertex is at {}: the outline has no size", vertices[0])
+    if size < 1.0 / _LARGEST:
+        raise _fail(
+            f"the outline at {{}} is {size:g} across (at least {1.0 / _LARGEST:g}): take a smaller unit",
+            vertices[0],
+        )
+    if reach > _FARTHEST * size:
+        raise _fail(
+            f"the outline is {size:g} across but lies at {{}}, over {_FARTHEST:g} times that from the origin, "
+            "where its coordinates lose their digits: move it nearer",
+            vertices[far],
+        )
+    return size
 
 
 def _signed_area(vertices: Floats, bulges: Floats) -> float:

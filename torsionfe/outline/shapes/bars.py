@@ -75,8 +75,9 @@ def ellipse(width: float, height: float, *, tolerance: float = 1e-6) -> TradeSha
         default takes 100 to 300 arcs up to ``width / height = 10``, with the area right to 1e-6 or better.
     """
     sizes = above_zero(width=width, height=height, tolerance=tolerance)
-    at_most("tolerance", sizes["tolerance"], "the coarsest that makes sense,", 0.01)
+    at_most("tolerance", sizes["tolerance"], "the coarsest that makes sense", 0.01)
     a, b = sizes["width"] / 2.0, sizes["height"] / 2.0
+    at_most("the longer axis", 2.0 * max(a, b), "1000 times the shorter", 2000.0 * min(a, b))
     vertices, bulges = fit_curve(
         lambda t: np.stack([a * np.cos(t), b * np.sin(t)], axis=1),
         lambda t: np.stack([-a * np.sin(t), b * np.cos(t)], axis=1),
@@ -214,7 +215,7 @@ def splined_shaft(
     Examples
     --------
     >>> splined_shaft(6, 28, 23, 6, root_radius=0.3).area.__round__(1)
-    501.2
+    506.5
     """
     n = count("teeth", teeth, 2, 200)
     sizes = {"teeth": float(n)} | above_zero(

@@ -20,6 +20,7 @@ __all__ = ["TradeShape", "above_zero", "at_most", "build", "count", "less", "zer
 
 #: Dimensions that are no lengths: a scaled copy keeps them.
 _NUMBERS = frozenset({"sides", "flats", "teeth", "columns", "rows", "voids", "flange_slope", "tolerance"})
+_SMALLEST = 1e-40
 #: What the fillet of every sharp re-entrant corner is called.
 _FILLETS = ("root_radius", "inner_radius")
 
@@ -126,9 +127,13 @@ class TradeShape(Outline):
 
 def _checked(check: Any, sizes: Mapping[str, Any]) -> dict[str, float]:
     try:
-        return {name: check(name, value) for name, value in sizes.items()}
+        numbers = {name: check(name, value) for name, value in sizes.items()}
     except ValueError as error:
         raise OutlineError(str(error)) from None
+    for name, value in numbers.items():
+        if value and not _SMALLEST <= value <= 1.0 / _SMALLEST:
+            raise OutlineError(f"{name} must be from {_SMALLEST:g} to {1.0 / _SMALLEST:g}, got {value:g}")
+    return numbers
 
 
 def above_zero(**sizes: float) -> dict[str, float]:
