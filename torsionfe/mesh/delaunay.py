@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+from contextlib import suppress
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse import csr_array
 from scipy.sparse.csgraph import connected_components
-from scipy.spatial import Delaunay
+from scipy.spatial import Delaunay, QhullError
 
 from torsionfe.checks import Floats, Ints
 
@@ -18,7 +19,12 @@ __all__ = ["BOX", "Bools", "Web", "weave"]
 
 #: Far points round the unit-size draft, so that every side has a triangle on either hand; no two alike,
 #: or they would lie on one circle with the corners of a square.
-BOX = np.array([[-2.9, -3.1], [3.2, -2.8], [2.7, 3.3], [-3.3, 2.6]])
+BOX = np.array([[-1.6, -1.7], [1.75, -1.5], [1.45, 1.8], [-1.8, 1.4]])
+#: How far points are shaken for the sake of speed, and the evenly spread sequence that tells where to.
+_SHAKE = 2e-12
+_SEQUENCE = np.array([0.7548776662466927, 0.5698402909980532])
+#: So few points seldom need any facet merged, and do better without a look at it.
+_FEW = 1000
 _FROM = np.array([1, 2, 0])
 _TO = np.array([2, 0, 1])
 
@@ -114,13 +120,26 @@ class Web:
         return here, barred
 
 
+def _delaunay(points: Floats) -> Delaunay:
+    """Return the Delaunay triangulation of points of about unit size.
+
+    A shake of 1e-12 spares the merging of facets whose nodes lie on one circle, which takes most of the
+    time; where the rounding is too coarse for that, facets are merged after all.
+    """
+    shaken = points + _SHAKE * (np.arange(len(points))[:, None] * _SEQUENCE % 1.0 - 0.5)
+    if len(points) < _FEW:
+        with suppress(QhullError):
+            return Delaunay(shaken, qhull_options="Qbb Q12 Q0")
+    return Delaunay(shaken, qhull_options="Qbb Q12")
+
+
 def weave(boundary: Floats, free: Floats, sides: Ints) -> Web:
     """Return the Delaunay triangulation of the box, ``boundary`` (b, 2) and ``free`` (f, 2) nodes.
 
     ``sides`` (s, 2) number boundary nodes, material on the left.
     """
     points = np.concatenate([BOX, boundary, free])
-    hull = Delaunay(points)
+    hull = _delaunay(points)
     triangles = hull.simplices.astype(np.int64)
     last = len(BOX) + len(boundary)
     first, second = triangles[:, _FROM].ravel(), triangles[:, _TO].ravel()

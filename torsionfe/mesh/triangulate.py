@@ -29,6 +29,8 @@ _MOST_PASSES = 300
 _SHORTEST = 1e-8
 #: A free node that sees a side under more than this angle is too near to it.
 _LENS = np.cos(np.radians(120.0))
+#: A sharp corner excuses angles down to this part of its own.
+_FORCED = 0.75
 _NONE = np.empty(0, dtype=np.int64)
 
 
@@ -96,19 +98,23 @@ def _improve(draft: Draft, web: Web) -> tuple[Draft, Ints]:
         crowded = _folded(draft, web, side_at)
     if len(crowded) == 0 and len(points) == 0:
         return draft, kept
-    draft, middles = _split(draft, crowded)
-    return _insert(draft, points, reach, middles), _NONE
+    draft, middles, half = _split(draft, crowded)
+    if len(middles):
+        distance, nearest = cKDTree(middles).query(points)
+        clear = distance >= np.maximum(reach, half[nearest])
+        points, reach = points[clear], reach[clear]
+    return _insert(draft, points, reach), _NONE
 
 
-def _split(draft: Draft, which: Ints) -> tuple[Draft, Floats]:
+def _split(draft: Draft, which: Ints) -> tuple[Draft, Floats, Floats]:
     """Split sides; free nodes in the circles over them give way (Chew 1993)."""
     if len(which) == 0:
-        return draft, np.empty((0, 2))
+        return draft, np.empty((0, 2)), np.empty(0)
     draft, middles, half = draft.split(which)
     if len(draft.free):
         distance, nearest = cKDTree(middles).query(draft.free)
         draft = replace(draft, free=draft.free[distance >= half[nearest]])
-    return draft, middles
+    return draft, middles, half
 
 
 def _torn_sides(draft: Draft, web: Web, torn: Bools) -> Ints:
@@ -151,9 +157,10 @@ def _bad_triangles(draft: Draft, web: Web, kept: Ints, side_at: Ints) -> tuple[I
     if len(bad) == 0:
         return _NONE, np.empty((0, 2)), np.empty(0)
     short = short[bad]
-    sine = double[bad] / np.sqrt(others[bad])
-    forced = _forced(draft, corners[bad], short, side_at[kept[bad]], sine)
-    bad, short = bad[~forced], short[~forced]
+    if draft.sharp.any():
+        sine = double[bad] / np.sqrt(others[bad])
+        forced = _forced(draft, corners[bad], short, side_at[kept[bad]], sine)
+        bad, short = bad[~forced], short[~forced]
     base, tip = opposite[bad, short], p[bad, short]
     start, end = p[bad, (short + 1) % 3], p[bad, (short + 2) % 3]
     length = np.sqrt(least[bad])
@@ -178,12 +185,11 @@ def _forced(draft: Draft, corners: Ints, short: Ints, side_at: Ints, sine: Float
     on_tip = (tip >= 0) & (tip < number) & (side_at[count, i] >= 0) & (side_at[count, j] >= 0)
     tip = np.where(on_tip, tip, 0)
     on_tip &= draft.node_t[tip] == 0.0
-    corner = np.minimum(draft.edges.interior_angle[draft.node_edge[tip]], SMALLEST_ANGLE)
-    own = on_tip & (sine > np.sin(0.75 * corner))
+    angle = draft.edges.interior_angle
+    forced = on_tip & (sine > _sine(_FORCED * angle[draft.node_edge[tip]]))
     u, v = corners[count, i] - first, corners[count, j] - first
     rim = (u >= 0) & (v >= 0) & (u < number) & (v < number)
     u, v = np.where(rim, u, 0), np.where(rim, v, 0)
-    across = np.zeros(len(corners), dtype=bool)
     for a, b in ((u, v), (v, u)):
         for before in _edges_at(draft, a):
             for after in _edges_at(draft, b):
@@ -191,8 +197,14 @@ def _forced(draft: Draft, corners: Ints, short: Ints, side_at: Ints, sine: Float
                 apex = draft.edges.start[after]
                 da = np.hypot(*(draft.nodes[a] - apex).T)
                 db = np.hypot(*(draft.nodes[b] - apex).T)
-                across |= rim & meet & (np.abs(da - db) < 1e-6 * da)
-    return np.asarray(own | across)
+                level = np.abs(da - db) < 1e-6 * da
+                forced |= rim & meet & level & (sine > _sine(_FORCED * angle[after]))
+    return np.asarray(forced)
+
+
+def _sine(angle: Floats) -> Floats:
+    """Return the sine up to a right angle, one beyond."""
+    return np.asarray(np.sin(np.minimum(angle, 0.5 * np.pi)))
 
 
 def _edges_at(draft: Draft, node: Ints) -> tuple[Ints, Ints]:
@@ -202,14 +214,15 @@ def _edges_at(draft: Draft, node: Ints) -> tuple[Ints, Ints]:
 
 
 def _too_near(web: Web, draft: Draft, here: Ints, points: Floats, side_at: Ints) -> Ints:
-    """Return the side of the triangles ``here`` that each of ``points`` is too near to, or -1."""
-    barred = np.full(len(here), -1)
-    for k in range(3):
-        side = side_at[here, k]
-        ends = draft.nodes[draft.sides[side]]
-        near = (side >= 0) & _wide(ends[:, 0] - points, ends[:, 1] - points)
-        barred[near] = side[near]
-    return barred
+    """Return the side of the triangles ``here`` or next to them that each point is too near to, or -1."""
+    around = np.concatenate([here[:, None], web.beyond[here]], axis=1)
+    side = side_at[around].reshape(len(here), 12)
+    ends = draft.nodes[draft.sides[side]] - points[:, None, None]
+    a, b = ends[:, :, 0], ends[:, :, 1]
+    cosine = np.sum(a * b, axis=2) / np.sqrt(np.sum(a * a, axis=2) * np.sum(b * b, axis=2))
+    cosine[side < 0] = 1.0
+    nearest, count = np.argmin(cosine, axis=1), np.arange(len(here))
+    return np.asarray(np.where(cosine[count, nearest] < _LENS, side[count, nearest], -1))
 
 
 def _folded(draft: Draft, web: Web, side_at: Ints) -> Ints:
@@ -225,13 +238,8 @@ def _folded(draft: Draft, web: Web, side_at: Ints) -> Ints:
     return np.unique(sides[folded][bulges[folded] != 0.0])
 
 
-def _insert(draft: Draft, points: Floats, reach: Floats, middles: Floats) -> Draft:
+def _insert(draft: Draft, points: Floats, reach: Floats) -> Draft:
     """Add free nodes, the shortest reach first, none within the reach of one that came before."""
-    if len(points) == 0:
-        return draft
-    if len(middles):
-        clear = cKDTree(middles).query(points)[0] >= reach
-        points, reach = points[clear], reach[clear]
     while len(points) > 1:
         taken = _apart(points, reach)
         points, reach = points[taken], reach[taken]
@@ -249,7 +257,8 @@ def _apart(points: Floats, reach: Floats) -> Bools:
     rank = np.empty(len(points), dtype=np.int64)
     rank[order] = np.arange(len(points))
     k = min(9, len(points))
-    distance, near = (np.asarray(found)[:, 1:] for found in cKDTree(points).query(points, k=k))
+    # (a point is not always the first among its twins, but a rank below its own is never its own)
+    distance, near = (np.asarray(found) for found in cKDTree(points).query(points, k=k))
     rival = (distance < reach[:, None]) & (rank[near] < rank[:, None])
     taken = np.zeros(len(points), dtype=bool)
     alive = np.ones(len(points), dtype=bool)
