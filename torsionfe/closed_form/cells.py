@@ -326,7 +326,7 @@ def thin_cells_of(kind: str, dimensions: Mapping[str, float]) -> ThinCells:
     if kind not in _SHAPES:
         known = ", ".join(map(repr, _SHAPES))
         raise InputError(
-            f"a {str(kind).replace('_', ' ')} has no cells by its dimensions; {known} have: "
+            f"no cells are known for the kind {kind!r}, only for {known}: "
             "for any outline with voids use thin_cells(outline)"
         )
     sizes = {}

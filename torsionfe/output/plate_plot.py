@@ -155,7 +155,7 @@ def _alike(a: Plate, b: Plate) -> bool:
 
 
 def _towards(name: str, line: Floats | None, outline: Outline) -> float:
-    """Return how far a line lies on the side that a plate's name speaks of, so that equal plates stay apart."""
+    """Return how far a line lies on the side that a plate's name speaks of: equal plates stay apart."""
     assert line is not None
     offset = line.mean(axis=0) - np.array(outline.centroid)
     return float(sum(_SIDES.get(word, np.zeros(2)) @ offset for word in name.split()))
