@@ -71,7 +71,7 @@ def test_bredt_on_confocal_tubes_misses_by_the_square_of_the_wall():
 
 def test_bredt_on_eccentric_tubes_with_a_wall_that_varies():
     # the middle line and int ds/t from the medial axis of two circles; exact series (Macdonald 1893) beside it
-    walls, errors, peaks = [12.0, 8.0, 5.0, 3.0], [], []
+    walls, errors, peaks = [5.0, 3.0, 2.0], [], []
     for wall in walls:
         e = 0.3 * wall
         hole = shapes.round_bar(100.0 - 2.0 * wall).translated(e, 0.0)
@@ -82,7 +82,7 @@ def test_bredt_on_eccentric_tubes_with_a_wall_that_varies():
         peaks.append(hand.peak_stress(1.0) / true.stress_per_torque - 1.0)
         assert hand.cells.walls[0].thickness == pytest.approx(0.7 * wall, rel=1e-3)
     assert rate(walls, errors) == pytest.approx(2.0, abs=0.1)
-    assert rate(walls, peaks) == pytest.approx(1.0, abs=0.2)
+    assert rate(walls, peaks) == pytest.approx(1.0, abs=0.15)
     assert all(error < 0.0 for error in errors + peaks)
 
 

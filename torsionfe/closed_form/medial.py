@@ -67,7 +67,7 @@ class Circles:
         return len(self.radius)
 
 
-def inscribed_circles(outline: Outline, samples: int = 2400) -> Circles:
+def inscribed_circles(outline: Outline, samples: int = 4000) -> Circles:
     """Return the largest inscribed circles at samples spread evenly along the boundary.
 
     Parameters
