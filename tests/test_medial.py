@@ -205,8 +205,8 @@ def test_what_is_no_plate_is_reported_with_its_share_and_place():
     assert region.at[0] > 75.0
     assert derived.covered == pytest.approx(1.0 - region.share, abs=1e-3)
     assert any("ends at (75.23, 2) in a region that is no plate" in note for note in derived.notes)
-    assert any("cover only 54 %" in note for note in derived.notes)
-    assert "unplated: 46 %" in str(derived)
+    assert any("cover only 54.3 %" in note for note in derived.notes)
+    assert "unplated: 45.7 %" in str(derived)
 
 
 @pytest.mark.parametrize(
@@ -223,6 +223,14 @@ def test_stubby_solids_have_no_plates_and_say_so(outline):
         plate_sum(derived)
 
 
+def test_a_stretch_too_short_for_a_plate_is_left_out_with_a_note():
+    lens = Outline([(-20, 0), (20, 0)], [0.25, 0.25])  # two arcs, 10 thick in the middle
+    derived = derive_plates(lens)
+    assert len(derived) == 0
+    assert "a stretch at (0, 0) was left out" in derived.notes[0]
+    assert "thick, filling" in derived.notes[0]
+
+
 def test_fins_on_a_box_are_the_plates_and_the_box_a_cell():
     shape = shapes.finned_box(60, 40, 3, 20, 4, root_radius=2)
     derived = derive_plates(shape)
@@ -231,6 +239,7 @@ def test_fins_on_a_box_are_the_plates_and_the_box_a_cell():
     assert derived.cells.fins == derived.plates
     assert "closed cells" in derived.notes[0]
     assert derived.covered > 0.98
+    assert "closed cells: 1, with 4 walls" in str(derived)
     whole, without = cell_sum(derived.cells), cell_sum(derived.without(0).cells)
     fin = plate_sum([derived[0]]).torsion_constant_twist
     assert whole.torsion_constant - without.torsion_constant == pytest.approx(fin)

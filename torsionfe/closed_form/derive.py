@@ -10,7 +10,7 @@ from shapely import LineString, MultiPoint, Polygon
 
 from torsionfe.checks import Floats, one_of, positive
 from torsionfe.closed_form.cell_lines import cells_around_voids, middle_line
-from torsionfe.closed_form.derived import DerivedPlates, Joint, band
+from torsionfe.closed_form.derived import DerivedPlates, Joint, band, place
 from torsionfe.closed_form.idealise import IDEALISATIONS
 from torsionfe.closed_form.joints import Ending, endings, extended, merged
 from torsionfe.closed_form.medial import inscribed_circles
@@ -73,7 +73,7 @@ def derive_plates(
         plates=tuple(Plate(_length(found.lines[k]), found.thickness[k]) for k in found.kept),
         idealisation=idealisation,
         meaning=IDEALISATIONS[idealisation],
-        notes=tuple(_notes(found, voids)),
+        notes=tuple(_notes(found, voids, outline.size)),
         outline=outline,
         centre_lines=tuple(found.lines[k] for k in found.kept),
         joints=tuple(_joints(found)),
@@ -215,21 +215,20 @@ def _doubts(derived: DerivedPlates) -> Iterator[str]:
     if not derived.plates and derived.closed is None:
         yield "no part of the section is a plate: the sum of thin plates does not apply"
     elif derived.covered < _COVERED:
-        yield f"plates and walls cover only {percent(derived.covered)} of the area: look at the rest"
+        yield f"plates and walls cover only {percent(derived.covered, 3)} of the area: look at the rest"
 
 
-def _notes(found: _Found, voids: int) -> Iterator[str]:
+def _notes(found: _Found, voids: int, size: float) -> Iterator[str]:
     if voids:
         yield "the section has closed cells; their walls are no plates: sum them with cell_sum(plates.cells)"
     for j, i in _crossings(found):
         yield f"plates {j} and {i} cross: where they do, the section is counted twice"
     for k, strip in enumerate(found.strips):
-        middle = found.lines[k].mean(axis=0)
-        where = f"at ({number(middle[0])}, {number(middle[1])})"
         if k not in found.kept:
+            where, width = place(found.lines[k].mean(axis=0), size), number(_length(found.lines[k]))
             yield (
-                f"a stretch {number(found.thickness[k])} thick {where} was left out: "
-                f"it fills {percent(found.filled[k])} of a rectangle {number(_length(found.lines[k]))} wide"
+                f"a stretch at {where} was left out: {width} wide, "
+                f"{number(found.thickness[k])} thick, filling {percent(found.filled[k], 3)} of that rectangle"
             )
             continue
         label = f"plate {found.kept.index(k)}"
@@ -240,5 +239,4 @@ def _notes(found: _Found, voids: int) -> Iterator[str]:
             yield f"{label} is curved: its developed width is used"
         for ending, point in zip(found.ends[k], found.lines[k][[0, -1]], strict=True):
             if ending.kind == "lost":
-                spot = f"({number(point[0])}, {number(point[1])})"
-                yield f"{label} ends at {spot} in a region that is no plate"
+                yield f"{label} ends at {place(point, size)} in a region that is no plate"

@@ -18,7 +18,7 @@ from torsionfe.errors import InputError
 from torsionfe.outline.outline import Outline
 from torsionfe.text import number, percent
 
-__all__ = ["DerivedPlates", "Joint", "Unplated", "band"]
+__all__ = ["DerivedPlates", "Joint", "Unplated", "band", "place"]
 
 _SMALLEST = 0.005  # of the area: smaller unplated regions are not listed
 
@@ -189,10 +189,16 @@ class DerivedPlates(PlateSet):
             count = len(self.closed.areas)
             lines.append(f"closed cells: {count}, with {len(self.closed.walls)} walls (see .cells)")
         lines += [
-            f"unplated: {percent(region.share)} at ({number(region.at[0])}, {number(region.at[1])})"
+            f"unplated: {percent(region.share, 3)} at {place(region.at, self.outline.size)}"
             for region in self.unplated
         ]
         return "\n".join(lines)
+
+
+def place(point: Floats | tuple[float, float], size: float) -> str:
+    """Return a point in words, what is zero but for rounding as 0."""
+    x, y = (0.0 if abs(value) < 1e-9 * size else float(value) for value in point)
+    return f"({number(x)}, {number(y)})"
 
 
 def band(line: Floats, thickness: float) -> Polygon:
