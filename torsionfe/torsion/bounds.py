@@ -4,8 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-
-from torsionfe.text import number
+from decimal import ROUND_CEILING, ROUND_FLOOR, ROUND_HALF_EVEN, Decimal
 
 __all__ = ["Bounds"]
 
@@ -21,8 +20,8 @@ class Bounds:
 
     Examples
     --------
-    >>> print(Bounds(99.0, 101.0))
-    100.0 (99 to 101)
+    >>> print(Bounds(99.04, 101.02))
+    100.0 (99.0 to 101.1)
     """
 
     lower: float
@@ -46,7 +45,19 @@ class Bounds:
         return format(self.value, spec) if spec else str(self)
 
     def __str__(self) -> str:
-        # as many digits as the bracket supports, and one more
-        digits = 4 if self.rel_gap <= 0.0 else max(2, min(12, 2 - math.floor(math.log10(self.rel_gap))))
-        lower, upper = number(self.lower, digits + 1), number(self.upper, digits + 1)
-        return f"{self.value:#.{digits}g} ({lower} to {upper})"
+        gap = self.upper - self.lower
+        # the bounds to two digits of their distance, rounded outwards so that they stay bounds
+        place = math.floor(math.log10(max(gap, abs(self.value) * 1e-12))) - 1 if self.value else 0
+        step = Decimal(1).scaleb(place)
+        lower = Decimal(self.lower).quantize(step, ROUND_FLOOR)
+        upper = Decimal(self.upper).quantize(step, ROUND_CEILING)
+        value = Decimal(self.value).quantize(step, ROUND_HALF_EVEN)
+        return f"{_written(value, place)} ({_written(lower, place)} to {_written(upper, place)})"
+
+
+def _written(value: Decimal, place: int) -> str:
+    """Return a decimal plainly where that stays short, else with an exponent."""
+    size = value.adjusted()
+    if -4 <= size < 9:
+        return f"{value:.{max(0, -place)}f}"
+    return f"{value:.{max(0, size - place)}e}"

@@ -30,6 +30,9 @@ if TYPE_CHECKING:
 
 __all__ = ["Pass", "TorsionSolution"]
 
+#: What floating-point rounding may take from the bounds: they are widened by it (measured: below 1e-13).
+_ROUNDING = 1e-12
+
 
 @dataclass(frozen=True, slots=True)
 class Pass:
@@ -95,7 +98,7 @@ class TorsionSolution:
         cls, outline: Outline, frame: Frame, look: Look, passes: tuple[Pass, ...], shortfall: str
     ) -> TorsionSolution:
         """Return the result of the last look, in the outline's own coordinates and unit."""
-        bounds = Bounds(look.fields.lower, look.fields.upper)
+        bounds = Bounds(look.fields.lower * (1.0 - _ROUNDING), look.fields.upper * (1.0 + _ROUNDING))
         spots = []
         for k in tied_peaks(look.boundary, look.peak, look.rel_error):
             x, y = (float(value) for value in frame.outward_points(look.peak.points[k]))
@@ -190,7 +193,7 @@ class TorsionSolution:
         """
         where = np.atleast_2d(np.asarray(points, dtype=float)) if np.ndim(points) == 1 else points
         given = finite_array("points", where, columns=2)
-        scale = finite("torque", torque) / (self.torsion_constant.value / self.frame.scale**3)
+        scale = finite("torque", torque) * self.frame.scale / self.torsion_constant.value
         inside = self.frame.inward_points(given)
         triangle, reference = locate(self.fields.space.mesh, inside)
         if (triangle < 0).any():

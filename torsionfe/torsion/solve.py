@@ -8,7 +8,6 @@ import numpy as np
 
 from torsionfe.checks import Ints, positive
 from torsionfe.errors import InputError
-from torsionfe.mesh.triangulate import triangulate
 from torsionfe.outline.outline import Outline
 from torsionfe.torsion.adaptive import around_peaks, refined
 from torsionfe.torsion.bounds import Bounds
@@ -55,6 +54,8 @@ def solve_torsion(
     MeshError
         The outline can't be triangulated; ``at`` names the place.
     """
+    from torsionfe.mesh.triangulate import triangulate
+
     tolerance, peak_wanted = _checked(outline, rel_tol, order, peak_tol, max_unknowns)
     frame = Frame.of(outline)
     mesh = frame.inward(triangulate(outline))
