@@ -14,10 +14,13 @@ from torsionfe.checks import Floats, finite, finite_array, positive
 from torsionfe.errors import OutlineError
 from torsionfe.outline import arcs
 from torsionfe.outline.edges import Edges, edges_of
-from torsionfe.outline.validate import validate_loop, validate_voids
+from torsionfe.outline.validate import CLEARANCE, validate_loop, validate_voids
 
 if TYPE_CHECKING:
+    from matplotlib.axes import Axes
     from shapely import Polygon
+
+    from torsionfe.output.outline_plot import OutlinePlot
 
 __all__ = ["Outline"]
 
@@ -77,13 +80,36 @@ class Outline:
     def from_polygon(cls, polygon: Polygon) -> Outline:
         """Return the outline of a shapely polygon, its exterior and interiors, edges straight.
 
-        Chains of chords stay as they are: `torsionfe.outline.facets` restores arcs.
+        Points that repeat the one before are left out. Chains of chords stay as they are:
+        `torsionfe.outline.facets` restores arcs.
+
+        Parameters
+        ----------
+        polygon : shapely.Polygon
+            Or a MultiPolygon of one part. Heights (z) are left out.
+
+        Raises
+        ------
+        OutlineError
+            Not a polygon, empty, of several parts, or not the boundary of a cross-section.
         """
+        from shapely import MultiPolygon, remove_repeated_points
         from shapely import Polygon as ShapelyPolygon
 
-        if not isinstance(polygon, ShapelyPolygon) or polygon.is_empty:
+        part = polygon
+        if isinstance(part, MultiPolygon) and not part.is_empty:
+            if len(part.geoms) > 1:
+                places = ", ".join(f"({piece.centroid.x:g}, {piece.centroid.y:g})" for piece in part.geoms[:5])
+                raise OutlineError(
+                    f"the polygon has {len(part.geoms)} parts, around {places}: a cross-section is one piece, "
+                    "so choose one of polygon.geoms"
+                )
+            part = part.geoms[0]
+        if not isinstance(part, ShapelyPolygon) or part.is_empty:
             raise OutlineError(f"a non-empty shapely Polygon is needed, got {polygon!r:.80}")
-        rings = [np.asarray(ring.coords)[:-1, :2] for ring in (polygon.exterior, *polygon.interiors)]
+        x0, y0, x1, y1 = part.bounds
+        part = remove_repeated_points(part, CLEARANCE * max(x1 - x0, y1 - y0))
+        rings = [np.asarray(ring.coords)[:-1, :2] for ring in (part.exterior, *part.interiors)]
         return cls(rings[0], voids=[cls(ring) for ring in rings[1:]])
 
     # --- what it is -----------------------------------------------------------------------------------
@@ -216,7 +242,53 @@ class Outline:
 
         return fillet(self, radius, at)
 
+    def union(self, other: Outline) -> Outline:
+        """Return the outline of what lies in this outline or in another; arcs stay arcs.
+
+        Raises
+        ------
+        OutlineError
+            The result is in several pieces or touches itself; the message names the places.
+        """
+        from torsionfe.outline.boolean import union
+
+        return union(self, other)
+
+    def difference(self, other: Outline) -> Outline:
+        """Return the outline of what lies in this outline and not in another; arcs stay arcs.
+
+        Raises
+        ------
+        OutlineError
+            Nothing is left, the result is in several pieces or touches itself; the message names the places.
+        """
+        from torsionfe.outline.boolean import difference
+
+        return difference(self, other)
+
     # --- comparing and showing ------------------------------------------------------------------------
+
+    def plot(self, ax: Axes | None = None, *, unit: str = "", vertex_numbers: bool = True) -> OutlinePlot:
+        """Draw the outline with overall dimensions and vertex numbers; see `plot_outline`."""
+        from torsionfe.output.outline_plot import plot_outline
+
+        return plot_outline(self, ax, unit=unit, vertex_numbers=vertex_numbers)
+
+    def matches(self, other: Outline, tolerance: float | None = None) -> bool:
+        """Return whether another outline has the same loops, wherever they start and in any order.
+
+        ``==`` is stricter: the same vertices in the same order, to the last digit.
+
+        Parameters
+        ----------
+        other : Outline
+        tolerance : float, optional
+            Largest distance between vertices, and between the middles of edges (length); one billionth of the
+            size by default.
+        """
+        from torsionfe.outline.matching import matches
+
+        return matches(self, other, 1e-9 * self.size if tolerance is None else positive("tolerance", tolerance))
 
     def __eq__(self, other: object) -> bool:
         if not isinstance(other, Outline):
