@@ -4,16 +4,19 @@ import numpy as np
 import pytest
 
 from torsionfe.errors import SolveError
+from torsionfe.fem import multigrid
 from torsionfe.fem.assembly import assemble
+from torsionfe.fem.direct import solve_positive
 from torsionfe.fem.elements import element, line_gradient, line_nodes, line_values, rule
 from torsionfe.fem.geometry import patches, reference_map, side_curve
-from torsionfe.fem.solve import solve_constrained, solve_positive
+from torsionfe.fem.solve import solve_constrained
 from torsionfe.fem.space import space_of
 from torsionfe.mesh.bisect import bisect
 from torsionfe.mesh.triangulate import triangulate
 from torsionfe.mesh.trimesh import TriMesh
 from torsionfe.outline import shapes
 from torsionfe.outline.outline import Outline
+from torsionfe.torsion.fields import solve_fields
 
 
 def two_triangles():
@@ -163,7 +166,56 @@ def test_a_singular_matrix_is_a_typed_error():
 
 def test_tied_unknowns_are_equal_and_fixed_ones_zero():
     system = assemble(space_of(two_triangles(), 1))
-    field = solve_constrained(system.stiffness, system.load, np.array([-1, 0, 0, 1]))
+    field = solve_constrained(system.space, system.stiffness, system.load, np.array([-1, 0, 0, 1]))
     assert field[0] == 0.0
     assert field[1] == field[2]
     assert field[3] != field[1]
+
+
+@pytest.mark.parametrize("order", [1, 2, 3])
+@pytest.mark.parametrize("outline", [shapes.multi_cell(120, 60, 6, 2, inner_radius=4), shapes.angle(62, 46, 13)], ids=lambda o: o.kind)
+def test_multigrid_agrees_with_the_direct_solve(order, outline, monkeypatch):
+    mesh = triangulate(outline)
+    corner = mesh.nodes[0]
+    for k in range(40):  # graded towards a corner, as the adaptive loop leaves it
+        distance = np.hypot(*(mesh.nodes[mesh.triangles].mean(axis=1) - corner).T)
+        near = distance < np.quantile(distance, 0.3)
+        mesh, _ = bisect(mesh, np.ones(len(near), dtype=bool) if k % 2 else near)
+        if mesh.unknowns(order) > 12_000:
+            break
+    direct = solve_fields(mesh, order)
+    monkeypatch.setattr("torsionfe.fem.solve.DIRECT_UP_TO", 0)
+    monkeypatch.setattr("torsionfe.fem.multigrid._COARSEST", 500)
+    iterated = solve_fields(mesh, order)
+    for a, b in ((direct.phi, iterated.phi), (direct.omega, iterated.omega)):
+        np.testing.assert_allclose(b, a, atol=1e-7 * np.abs(a).max())
+    assert iterated.lower == pytest.approx(direct.lower, rel=1e-12)
+    assert iterated.upper == pytest.approx(direct.upper, rel=1e-12)
+
+
+def test_multigrid_needs_no_more_steps_on_finer_meshes(monkeypatch):
+    steps = []
+    cycle = multigrid._cycle
+    monkeypatch.setattr("torsionfe.fem.solve.DIRECT_UP_TO", 0)
+    monkeypatch.setattr("torsionfe.fem.multigrid._COARSEST", 300)
+    monkeypatch.setattr(multigrid, "_cycle", lambda a, b, depth, r: (steps.append(depth), cycle(a, b, depth, r))[1])
+    mesh = triangulate(shapes.angle(62, 46, 13, root_radius=7))
+    counts = []
+    for _ in range(3):
+        for _ in range(4):
+            mesh, _ = bisect(mesh, np.ones(len(mesh.triangles), dtype=bool))
+        steps.clear()
+        solve_fields(mesh, 2)
+        counts.append(steps.count(0))
+    assert counts[-1] <= counts[0] + 8  # two solves of about ten steps each
+    assert counts[-1] <= 40
+
+
+def test_multigrid_that_does_not_converge_is_a_typed_error(monkeypatch):
+    monkeypatch.setattr("torsionfe.fem.solve.DIRECT_UP_TO", 0)
+    monkeypatch.setattr(multigrid, "_MOST_STEPS", 1)
+    mesh = triangulate(shapes.angle(62, 46, 13, root_radius=7))
+    for _ in range(8):
+        mesh, _ = bisect(mesh, np.ones(len(mesh.triangles), dtype=bool))
+    with pytest.raises(SolveError, match="the iteration stopped"):
+        solve_fields(mesh, 2)

@@ -1,4 +1,4 @@
-"""Sparse solves: constraints as a map to unknowns, and a direct factorisation."""
+"""Sparse solves: constraints as a map to unknowns; direct up to a size, multigrid beyond."""
 
 from __future__ import annotations
 
@@ -7,12 +7,17 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from torsionfe.checks import Floats, Ints
-from torsionfe.errors import SolveError
+from torsionfe.fem.direct import solve_positive
+from torsionfe.fem.multigrid import solve_multigrid
+from torsionfe.fem.space import Space
 
 if TYPE_CHECKING:
     from scipy.sparse import csr_array
 
-__all__ = ["reduced", "solve_constrained", "solve_positive"]
+__all__ = ["DIRECT_UP_TO", "reduced", "solve_constrained"]
+
+#: Systems up to this size are factorised, larger ones iterated: where the two cost the same.
+DIRECT_UP_TO = 10_000
 
 
 def reduced(stiffness: csr_array, unknown: Ints, count: int) -> csr_array:
@@ -35,11 +40,12 @@ def reduced(stiffness: csr_array, unknown: Ints, count: int) -> csr_array:
     return coo_array((entries.data[kept], where), shape=(count, count)).tocsr()
 
 
-def solve_constrained(stiffness: csr_array, load: Floats, unknown: Ints) -> Floats:
+def solve_constrained(space: Space, stiffness: csr_array, load: Floats, unknown: Ints) -> Floats:
     """Return the field ``u`` with ``K u = load`` under zero and tied values.
 
     Parameters
     ----------
+    space : Space
     stiffness : sparse array of shape (n, n)
     load : ndarray of shape (n,)
     unknown : ndarray of shape (n,)
@@ -54,30 +60,9 @@ def solve_constrained(stiffness: csr_array, load: Floats, unknown: Ints) -> Floa
         return np.zeros(len(load))
     free = unknown >= 0
     right = np.asarray(np.bincount(unknown[free], load[free], count), dtype=float)
-    solution = solve_positive(reduced(stiffness, unknown, count), right)
+    matrix = reduced(stiffness, unknown, count)
+    if count <= DIRECT_UP_TO:
+        solution = solve_positive(matrix, right)
+    else:
+        solution = solve_multigrid(space, matrix, right, unknown)
     return np.asarray(np.where(free, solution[unknown], 0.0), dtype=float)
-
-
-def solve_positive(matrix: csr_array, right: Floats) -> Floats:
-    """Return the solution of a symmetric positive definite system.
-
-    Raises
-    ------
-    SolveError
-        The matrix is singular to working precision.
-    """
-    from scipy.sparse import csc_array
-    from scipy.sparse.linalg import splu
-
-    # the matrix is symmetric, so its rows serve as columns
-    columns = csc_array((matrix.data, matrix.indices, matrix.indptr), shape=matrix.shape)
-    try:
-        factor = splu(
-            columns, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True}
-        )
-    except RuntimeError as error:
-        raise SolveError(f"the stiffness matrix of {matrix.shape[0]} unknowns is singular: {error}") from None
-    solution = np.asarray(factor.solve(right), dtype=float)
-    if not np.isfinite(solution).all():
-        raise SolveError(f"the solution of {matrix.shape[0]} unknowns is not finite: the mesh is degenerate")
-    return solution

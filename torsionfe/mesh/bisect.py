@@ -36,7 +36,8 @@ def bisect(mesh: TriMesh, marked: NDArray[np.bool_]) -> tuple[TriMesh, Ints]:
     nodes = np.concatenate([mesh.nodes, mesh.nodes[mesh.links[cut]].mean(axis=1)])
     sides, side_edge, side_span = _split_sides(mesh, middle, nodes)
     triangles, parent = _split_triangles(mesh, middle)
-    return TriMesh(nodes, triangles, sides, side_edge, side_span, mesh.edges), parent
+    history = np.concatenate([mesh.born, mesh.links[cut]])
+    return TriMesh(nodes, triangles, sides, side_edge, side_span, mesh.edges, history), parent
 
 
 def _close(mesh: TriMesh, marked: NDArray[np.bool_]) -> NDArray[np.bool_]:

@@ -32,6 +32,9 @@ class TriMesh:
         Where on that edge the side begins and ends, as fractions of the edge's length.
     edges : Edges
         The outline's edge table.
+    history : ndarray of shape (n, 2), optional
+        The ends of the link that bisection made each node the middle of; -1 for the nodes of the first mesh,
+        which come first.
     """
 
     nodes: Floats
@@ -40,6 +43,12 @@ class TriMesh:
     side_edge: Ints
     side_span: Floats
     edges: Edges
+    history: Ints | None = None
+
+    @property
+    def born(self) -> Ints:
+        """The ``history``, or that of a mesh which was never bisected."""
+        return np.full((len(self.nodes), 2), -1) if self.history is None else self.history
 
     @cached_property
     def _linked(self) -> tuple[Ints, Ints, Ints]:

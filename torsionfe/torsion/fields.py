@@ -64,9 +64,9 @@ def solve_fields(mesh: TriMesh, order: int) -> Fields:
     """Solve for both functions with elements of the given order."""
     system = assemble(space_of(mesh, order))
     unknown, source = _stress_function_problem(system)
-    phi = solve_constrained(system.stiffness, source, unknown)
+    phi = solve_constrained(system.space, system.stiffness, source, unknown)
     pinned = np.arange(-1, system.space.size - 1)
-    omega = solve_constrained(system.stiffness, system.twist, pinned)
+    omega = solve_constrained(system.space, system.stiffness, system.twist, pinned)
     parts = energies(system, phi, omega)
     lower = 2.0 * float(source @ phi) - float(parts.phi.sum())
     return Fields(system, phi, omega, parts, lower, float(parts.omega.sum()))

@@ -39,17 +39,17 @@ class Look:
     rel_error: Floats
 
 
-def look_at(mesh: TriMesh, order: int, before: Look | None) -> Look:
-    """Solve one mesh and look at it, beside the look ``before`` it."""
+def look_at(mesh: TriMesh, order: int, before: Peak | None) -> Look:
+    """Solve one mesh and look at it, beside the peaks that the mesh ``before`` it showed."""
     fields = solve_fields(mesh, order)
     boundary = boundary_stress(fields)
     peak = find_peaks(boundary)
     return Look(fields, boundary, peak, _peak_error(peak, before))
 
 
-def _peak_error(peak: Peak, before: Look | None) -> Floats:
+def _peak_error(peak: Peak, before: Peak | None) -> Floats:
     """Return the relative error of each peak: what its samples leave open, and its change since the last mesh."""
-    if before is None or not len(before.peak.tau) or not len(peak.tau):
+    if before is None or not len(before.tau) or not len(peak.tau):
         return np.full(len(peak.tau), 1.0)
-    change = abs(peak.tau[0] - before.peak.tau[0]) / peak.tau[0]
+    change = abs(peak.tau[0] - before.tau[0]) / peak.tau[0]
     return np.asarray(_CAUTION * np.maximum(peak.doubt, _OF_CHANGE * change))

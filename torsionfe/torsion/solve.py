@@ -60,9 +60,8 @@ def solve_torsion(
     frame = Frame.of(outline)
     mesh = frame.inward(triangulate(outline))
     trail: list[Pass] = []
-    look = None
+    look = look_at(mesh, order, None)
     while True:
-        look = look_at(mesh, order, look)
         trail.append(_pass(look, frame))
         shortfall = _shortfall(look, tolerance, peak_wanted)
         if not shortfall or len(trail) == _MOST_PASSES:
@@ -71,6 +70,9 @@ def solve_torsion(
         if mesh.unknowns(order) > max_unknowns:
             shortfall += f" within {max_unknowns} unknowns"
             break
+        before = look.peak
+        del look  # the coarser fields are let go before the finer ones are made
+        look = look_at(mesh, order, before)
     return TorsionSolution.of(outline, frame, look, tuple(trail), shortfall)
 
 
