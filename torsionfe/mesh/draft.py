@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -12,13 +13,15 @@ from torsionfe.outline import arcs
 from torsionfe.outline.edges import Edges
 from torsionfe.outline.outline import Outline
 
-__all__ = ["SHARP", "Draft", "draft_of", "invalid_when_bent"]
+__all__ = ["Draft", "draft_of", "invalid_when_bent"]
 
 #: Corners sharper than this (radians), of the material or of the gap, are cut on concentric shells.
-SHARP = np.radians(60.5)
+_SHARP = np.radians(60.5)
 _LARGEST_SWEEP = np.radians(30.0)
 #: The bent triangle's Jacobian stays above this part of the straight one's.
 _MARGIN = 0.3
+_LATTICE = np.array([(6 - i - j, i, j) for i in range(7) for j in range(7 - i)]) / 6.0
+_RATES = ((-1.0, 1.0, 0.0), (-1.0, 0.0, 1.0))
 
 
 @dataclass(frozen=True)
@@ -27,12 +30,14 @@ class Draft:
 
     Attributes
     ----------
+    centre, scale : ndarray of shape (2,) and float
+        From the user's coordinates to the draft's; the scale is a power of two.
     edges : Edges
         The outline's edges, in the draft's coordinates.
     sharp : ndarray of bool, shape (e,)
         Whether the corner at the start of each edge is sharp.
-    nodes : ndarray of shape (b, 2)
-        Boundary nodes; free nodes (f, 2) are ``free``.
+    nodes, free : ndarray of shape (b, 2) and (f, 2)
+        Boundary nodes, and nodes inside.
     node_edge, node_t : ndarray of shape (b,)
         The edge that each boundary node lies on, and the fraction of its length (0 to below 1).
     sides : ndarray of shape (s, 2)
@@ -41,6 +46,8 @@ class Draft:
         The edge that each side lies on, and from where to where as fractions of its length.
     """
 
+    centre: Floats
+    scale: float
     edges: Edges
     sharp: Bools
     nodes: Floats
@@ -57,16 +64,12 @@ class Draft:
         share = self.side_span[:, 1] - self.side_span[:, 0]
         return np.asarray(np.tan(np.arctan(self.edges.bulge[self.side_edge]) * share), dtype=float)
 
-    @property
-    def chords(self) -> Floats:
-        """Each side as a vector from end to end, shape (s, 2)."""
-        return np.asarray(self.nodes[self.sides[:, 1]] - self.nodes[self.sides[:, 0]])
+    def place(self, points: Floats) -> Floats:
+        """Return points (k, 2) in the user's coordinates."""
+        return np.asarray(points / self.scale + self.centre)
 
     def split(self, which: Ints) -> tuple[Draft, Floats, Floats]:
-        """Return the draft with the sides ``which`` (k,) split, the new nodes, and the half chords.
-
-        Free nodes in the circle over a split side give way (Chew 1993), for the side's sake.
-        """
+        """Return the draft with the sides ``which`` (k,) split, the new nodes (k, 2), the half chords (k,)."""
         t = self._where(which)
         edge, span, ends = self.side_edge[which], self.side_span[which], self.sides[which]
         points = self.edges.points(edge, t)
@@ -100,7 +103,8 @@ class Draft:
         if not shell.any():
             return np.asarray(middle)
         rows = edge[shell]
-        chord = np.hypot(*self.chords[which[shell]].T)
+        ends = self.nodes[self.sides[which[shell]]]
+        chord = np.hypot(*(ends[:, 1] - ends[:, 0]).T)
         reach = np.exp2(np.round(np.log2(0.5 * chord)))
         turn = np.abs(arcs.sweep(self.edges.bulge[rows]))
         with np.errstate(invalid="ignore"):
@@ -111,39 +115,32 @@ class Draft:
         return np.asarray(np.clip(middle, 0.9 * low + 0.1 * high, 0.1 * low + 0.9 * high))
 
 
-def draft_of(outline: Outline) -> tuple[Draft, Floats, float]:
-    """Return the coarsest draft of an outline, its centre (2,) and its scale, a power of two.
-
-    Straight edges are one side each, arcs one for every 30 degrees begun.
-    """
+def draft_of(outline: Outline) -> Draft:
+    """Return the coarsest draft of an outline: straight edges one side each, arcs one every 30 degrees."""
     edges = outline.edges
-    bounds = np.array(outline.bounds)
-    centre = 0.5 * (bounds[:2] + bounds[2:])
-    scale = float(np.exp2(1.0 - np.ceil(np.log2(outline.size))))
-    small = replace(edges, start=(edges.start - centre) * scale, end=(edges.end - centre) * scale)
-    angle = edges.interior_angle
-    sharp = (angle < SHARP) | (angle > 2.0 * np.pi - SHARP)
+    x0, y0, x1, y1 = outline.bounds
+    centre = np.array([0.5 * (x0 + x1), 0.5 * (y0 + y1)])
+    scale = math.ldexp(1.0, 1 - math.frexp(max(x1 - x0, y1 - y0))[1])
     turn = np.abs(arcs.sweep(edges.bulge))
     count = np.maximum(np.ceil(turn / _LARGEST_SWEEP * (1.0 - 1e-9)), 1.0).astype(np.int64)
     first = np.cumsum(count) - count
     rows = np.repeat(np.arange(len(edges)), count)
-    place = np.arange(len(rows)) - first[rows]
-    t = place / count[rows]
-    ends = np.where(place + 1 == count[rows], first[edges.following[rows]], np.arange(len(rows)) + 1)
-    return (
-        Draft(
-            edges=small,
-            sharp=sharp,
-            nodes=small.points(rows, t),
-            node_edge=rows,
-            node_t=t,
-            sides=np.stack([np.arange(len(rows)), ends], axis=1),
-            side_edge=rows,
-            side_span=np.stack([t, (place + 1) / count[rows]], axis=1),
-            free=np.empty((0, 2)),
-        ),
-        centre,
-        scale,
+    number = np.arange(len(rows))
+    t, until = (number - first[rows]) / count[rows], (number - first[rows] + 1) / count[rows]
+    ends = np.where(until == 1.0, first[edges.following[rows]], number + 1)
+    small = replace(edges, start=(edges.start - centre) * scale, end=(edges.end - centre) * scale)
+    return Draft(
+        centre=centre,
+        scale=scale,
+        edges=small,
+        sharp=np.abs(edges.interior_angle - np.pi) > np.pi - _SHARP,
+        nodes=small.points(rows, t),
+        node_edge=rows,
+        node_t=t,
+        sides=np.stack([number, ends], axis=1),
+        side_edge=rows,
+        side_span=np.stack([t, until], axis=1),
+        free=np.empty((0, 2)),
     )
 
 
@@ -167,32 +164,20 @@ def invalid_when_bent(corners: Floats, bulges: Floats) -> Bools:
     ``v2`` bulges by ``D(s) = n R sin(a)**2 / (cos(a) + sqrt(1 - s**2 sin(a)**2))``, ``a`` half its sweep
     and ``n`` its outward normal. Its Jacobian is sampled on a lattice.
     """
-    l0 = 1.0 - _LATTICE.sum(axis=1)
-    bary = np.stack([l0, _LATTICE[:, 0], _LATTICE[:, 1]], axis=1)
     e1, e2 = corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0]
-    # columns of the Jacobian with respect to l1 and l2 (l0 = 1 - l1 - l2), at each lattice point
-    by = [np.repeat(e[:, None], len(bary), axis=1) for e in (e1, e2)]
-    rate = np.array([[-1.0, -1.0], [1.0, 0.0], [0.0, 1.0]])
+    # the derivatives by l1 and l2 (l0 = 1 - l1 - l2) at each point of the lattice
+    by = [np.repeat(e[:, None], len(_LATTICE), axis=1) for e in (e1, e2)]
     for k in range(3):
         bent = np.flatnonzero(bulges[:, k])
-        if len(bent) == 0:
-            continue
         i, j = (k + 1) % 3, (k + 2) % 3
         chord = corners[bent, j] - corners[bent, i]
+        outward = np.stack([chord[:, 1], -chord[:, 0]], axis=1)[:, None]  # n times the chord, 2 R sin(a)
         half = 2.0 * np.arctan(bulges[bent, k])[:, None]
-        # R n = (chord turned right) / (2 sin(a)), so D = (chord turned right) sin(a) / (2 (...))
-        turned = np.stack([chord[:, 1], -chord[:, 0]], axis=1)
-        s = (bary[:, j] - bary[:, i])[None]
-        root = np.sqrt(1.0 - (s * np.sin(half)) ** 2)
+        u, v = _LATTICE[:, i], _LATTICE[:, j]
+        root = np.sqrt(1.0 - ((v - u) * np.sin(half)) ** 2)
         rise = 0.5 * np.sin(half) / (np.cos(half) + root)
-        slope = rise / (np.cos(half) + root) * s * np.sin(half) ** 2 / root
-        product = bary[:, i] * bary[:, j]
-        for c in range(2):
-            grow = rate[i, c] * bary[:, j] + rate[j, c] * bary[:, i]
-            amount = 4.0 * (grow * rise + product * slope * (rate[j, c] - rate[i, c]))
-            by[c][bent] += amount[..., None] * turned[:, None]
-    jacobian = cross(by[0], by[1])
-    return np.asarray(jacobian.min(axis=1) < _MARGIN * cross(e1, e2))
-
-
-_LATTICE = np.array([(i, j) for i in range(7) for j in range(7 - i)]) / 6.0
+        slope = rise * (v - u) * np.sin(half) ** 2 / (root * (np.cos(half) + root))
+        for rate, grown in zip(_RATES, by, strict=True):
+            growth = (rate[i] * v + rate[j] * u) * rise + u * v * slope * (rate[j] - rate[i])
+            grown[bent] += 4.0 * growth[..., None] * outward
+    return np.asarray(cross(by[0], by[1]).min(axis=1) < _MARGIN * cross(e1, e2))

@@ -24,9 +24,12 @@ __all__ = ["SMALLEST_ANGLE", "triangulate"]
 
 #: Corners of triangles are at least this (radians), but for sharp corners of the outline.
 SMALLEST_ANGLE = np.radians(25.0)
-_MOST_NODES = 200_000
-_MOST_PASSES = 300
-_SHORTEST = 1e-8
+# what an outline may cost: nodes, rounds, nodes summed over the rounds, and half the shortest side's length
+# as a part of the outline's size
+_MOST_NODES = 100_000
+_MOST_ROUNDS = 300
+_MOST_WORK = 1_500_000
+_SHORTEST = 1e-9
 #: A free node that sees a side under more than this angle is too near to it.
 _LENS = np.cos(np.radians(120.0))
 #: A sharp corner excuses angles down to this part of its own.
@@ -52,27 +55,35 @@ def triangulate(outline: Outline) -> TriMesh:
     MeshError
         The outline has details too fine to be meshed within the limits; ``at`` names the place.
     """
-    draft, centre, scale = draft_of(outline)
-    for _ in range(_MOST_PASSES):
+    draft = draft_of(outline)
+    work = 0
+    for _ in range(_MOST_ROUNDS):
         web = weave(draft.nodes, draft.free, draft.sides)
-        after, inside = _improve(draft, web)
-        if after is draft:
-            free = draft.free / scale + centre
-            return _finish(outline.edges, draft, web.triangles[inside] - len(BOX), free)
-        draft = after
-        if len(draft.nodes) + len(draft.free) > _MOST_NODES:
-            break
-    raise _too_fine(draft, centre, scale)
+        better, inside = _improve(draft, web)
+        if better is draft:
+            return _finish(outline.edges, draft, web.triangles[inside] - len(BOX))
+        work += len(web.points)
+        if work > _MOST_WORK or len(better.nodes) + len(better.free) > _MOST_NODES:
+            at = _finest(better, len(draft.sides))
+            raise _failure(draft, at, f"walls and details so thin need more than {_MOST_NODES} nodes")
+        draft = better
+    raise _failure(draft, _finest(draft, 0), f"the triangles have not settled in {_MOST_ROUNDS} rounds")
 
 
-def _too_fine(draft: Draft, centre: Floats, scale: float) -> MeshError:
-    size = np.hypot(*draft.chords.T)
-    k = int(np.argmin(size))
-    x, y = draft.nodes[draft.sides[k]].mean(axis=0) / scale + centre
+def _finest(draft: Draft, since: int) -> Floats:
+    """Return the middle of the shortest of the sides that were split last."""
+    ends = draft.nodes[draft.sides[since:] if since < len(draft.sides) else draft.sides]
+    size = np.hypot(*(ends[:, 1] - ends[:, 0]).T)
+    return np.asarray(ends[np.argmin(size)].mean(axis=0))
+
+
+def _failure(draft: Draft, point: Floats, why: str) -> MeshError:
+    x, y = (float(value) for value in draft.place(point))
+    size = float(np.ptp(draft.nodes, axis=0).max()) / draft.scale
     return MeshError(
-        f"the outline needs more than {_MOST_NODES} nodes or {_MOST_PASSES} rounds; the finest sides, "
-        f"{size[k] / scale:.3g} long, are near ({x:g}, {y:g}): widen the gap or drop the detail there",
-        (float(x), float(y)),
+        f"no mesh near ({x:g}, {y:g}): {why} (the outline is {size:.3g} across): "
+        "thicken the wall, or drop the detail there",
+        (x, y),
     )
 
 
@@ -83,9 +94,8 @@ def _improve(draft: Draft, web: Web) -> tuple[Draft, Ints]:
         return _split(draft, missing)[0], _NONE
     side_at = web.side_at()
     inside, outside = web.regions(side_at)
-    torn = inside & outside
-    if torn.any():
-        return _split(draft, _torn_sides(draft, web, torn))[0], _NONE
+    if (inside & outside).any():
+        return _split(draft, _torn(draft, web, inside & outside))[0], _NONE
     kept = np.flatnonzero(inside)
     crowded = _crowded(draft, web)
     bad, points, reach = _bad_triangles(draft, web, kept, side_at)
@@ -93,6 +103,8 @@ def _improve(draft: Draft, web: Web) -> tuple[Draft, Ints]:
         here, barred = web.walk(bad, points, side_at)
         barred = np.where(barred == -1, _too_near(web, draft, here, points, side_at), barred)
         crowded = np.unique(np.concatenate([crowded, barred[barred >= 0]]))
+        if len(crowded) == 0 and (barred != -1).all():
+            raise _failure(draft, points[0], "rounding hides the way to a better triangle")
         points, reach = points[barred == -1], reach[barred == -1]
     elif len(crowded) == 0:
         crowded = _folded(draft, web, side_at)
@@ -111,16 +123,23 @@ def _split(draft: Draft, which: Ints) -> tuple[Draft, Floats, Floats]:
     if len(which) == 0:
         return draft, np.empty((0, 2)), np.empty(0)
     draft, middles, half = draft.split(which)
+    least = int(np.argmin(half))
+    if half[least] < _SHORTEST:
+        raise _failure(draft, middles[least], f"the nodes would be nearer than {_SHORTEST / draft.scale:.3g}")
     if len(draft.free):
         distance, nearest = cKDTree(middles).query(draft.free)
         draft = replace(draft, free=draft.free[distance >= half[nearest]])
     return draft, middles, half
 
 
-def _torn_sides(draft: Draft, web: Web, torn: Bools) -> Ints:
+def _torn(draft: Draft, web: Web, torn: Bools) -> Ints:
     """Return the arcs' sides to split where a region is both inside and outside."""
-    at = (torn[web.left // 3] | torn[web.right // 3]) & (draft.side_bulge != 0.0)
-    return np.flatnonzero(at)
+    at = torn[web.left // 3] | torn[web.right // 3]
+    bent = np.flatnonzero(at & (draft.side_bulge != 0.0))
+    if len(bent) == 0:
+        point = draft.nodes[draft.sides[np.argmax(at), 0]]
+        raise _failure(draft, point, "two walls are too near to tell inside from outside")
+    return bent
 
 
 def _crowded(draft: Draft, web: Web) -> Ints:
@@ -129,11 +148,9 @@ def _crowded(draft: Draft, web: Web) -> Ints:
     p = web.points[apex]
     a, b = draft.nodes[draft.sides[:, 0]] - p, draft.nodes[draft.sides[:, 1]] - p
     near = (apex >= len(BOX) + len(draft.nodes)) & _wide(a, b)
-    curved = np.abs(draft.side_bulge)
-    chord = b - a
-    # four sagittas: where the bent triangle is about to fold
-    length2 = np.sum(chord**2, axis=1)
-    near |= (cross(a, b) < curved * length2 * 1.5) & (curved > 0.0)
+    # within three sagittas (bulge * chord / 2) of an arc, where the bent triangle is about to fold
+    bulge = np.abs(draft.side_bulge)
+    near |= (cross(a, b) < 1.5 * bulge * np.sum((b - a) ** 2, axis=1)) & (bulge > 0.0)
     return np.flatnonzero(near)
 
 
@@ -166,7 +183,7 @@ def _bad_triangles(draft: Draft, web: Web, kept: Ints, side_at: Ints) -> tuple[I
     length = np.sqrt(least[bad])
     normal = np.stack([-base[:, 1], base[:, 0]], axis=1) / length[:, None]
     # the circumcentre, or nearer: where the shortest side would be seen under just the angle wanted
-    centre = np.sum((tip - start) * (tip - end), axis=1) * length / (2.0 * double[bad])
+    centre = np.sum((tip - start) * (tip - end), axis=1) * length / (2.0 * np.maximum(double[bad], 1e-300))
     height = np.minimum(centre, 0.475 * length / np.tan(0.5 * SMALLEST_ANGLE))
     return kept[bad], 0.5 * (start + end) + height[:, None] * normal, np.hypot(height, 0.5 * length)
 
@@ -268,13 +285,17 @@ def _apart(points: Floats, reach: Floats) -> Bools:
     return taken
 
 
-def _finish(edges: Edges, draft: Draft, triangles: Ints, free: Floats) -> TriMesh:
+def _finish(edges: Edges, draft: Draft, triangles: Ints) -> TriMesh:
     """Return the draft as a mesh in the user's coordinates."""
-    nodes = np.concatenate([edges.points(draft.node_edge, draft.node_t), free])
+    nodes = np.concatenate([edges.points(draft.node_edge, draft.node_t), draft.place(draft.free)])
     p = nodes[triangles]
-    length2 = np.sum((p[:, [2, 0, 1]] - p[:, [1, 2, 0]]) ** 2, axis=2)
-    turn = (np.argmax(length2, axis=1)[:, None] + np.arange(3)) % 3
-    triangles = np.take_along_axis(triangles, turn, axis=1)
+    opposite = p[:, [2, 0, 1]] - p[:, [1, 2, 0]]
+    area = cross(opposite[:, 0], opposite[:, 1])
+    if area.min() <= 0.0:
+        at = (p[np.argmin(area), 0] - draft.centre) * draft.scale
+        raise _failure(draft, at, "rounding turns a triangle over")
+    turn = np.argmax(np.sum(opposite**2, axis=2), axis=1)[:, None] + np.arange(3)
+    triangles = np.take_along_axis(triangles, turn % 3, axis=1)
     order = np.lexsort((draft.side_span[:, 0], draft.side_edge))
     sides, edge, span = draft.sides[order], draft.side_edge[order], draft.side_span[order]
     return TriMesh(nodes, triangles, sides, edge, span, edges)
