@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import shapely
 
-from torsionfe.checks import Floats
+from torsionfe.checks import Floats, Ints
 from torsionfe.errors import OutlineError
 from torsionfe.outline import arcs
 
@@ -29,15 +29,20 @@ _CUSP = np.radians(0.5)
 def facets(vertices: Floats, bulges: Floats, tolerance: float) -> Floats:
     """Return the loop with each arc as chords at most ``tolerance`` (length) off, shape (m, 2)."""
     p, q = vertices, np.roll(vertices, -1, axis=0)
-    turn = np.abs(arcs.sweep(bulges))
-    radius = arcs.arc_radius(p, q, bulges)
-    finite = np.where(turn > 0.0, radius, 1.0)
-    step = 2.0 * np.arccos(np.clip(1.0 - tolerance / finite, 0.0, 1.0 - 1e-9))
-    # at least one chord per 15 degrees, so that a coarse tolerance keeps the shape
-    count = np.where(turn > 0.0, np.ceil(turn / np.minimum(step, np.pi / 12.0)), 1.0).astype(int)
+    count = facet_counts(vertices, bulges, tolerance)
     rows = np.repeat(np.arange(len(p)), count)
     within = np.arange(count.sum()) - np.repeat(np.cumsum(count) - count, count)
     return arcs.point_at(p[rows], q[rows], bulges[rows], within / count[rows])
+
+
+def facet_counts(vertices: Floats, bulges: Floats, tolerance: float) -> Ints:
+    """Return into how many chords `facets` breaks each edge, shape (n,)."""
+    turn = np.abs(arcs.sweep(bulges))
+    radius = arcs.arc_radius(vertices, np.roll(vertices, -1, axis=0), bulges)
+    finite = np.where(turn > 0.0, radius, 1.0)
+    step = 2.0 * np.arccos(np.clip(1.0 - tolerance / finite, 0.0, 1.0 - 1e-9))
+    # at least one chord per 15 degrees, so that a coarse tolerance keeps the shape
+    return np.where(turn > 0.0, np.ceil(turn / np.minimum(step, np.pi / 12.0)), 1.0).astype(np.int64)
 
 
 def _place(point: Floats) -> tuple[float, float]:
@@ -81,6 +86,7 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
         order = -np.arange(n) % n
         vertices, bulges = vertices[order], -bulges[(order - 1) % n]
     _refuse_cusps(vertices, bulges)
+    _refuse_pinch(vertices, bulges, size)
     return vertices.copy(), np.where(bulges == 0.0, 0.0, bulges)
 
 
@@ -149,6 +155,32 @@ def _refuse_cusps(vertices: Floats, bulges: Floats) -> None:
             f"the edges at vertex {k} {{}} fold back on each other (angle {np.degrees(np.pi - turn[k]):.2g} "
             f"degrees, at least {np.degrees(_CUSP):g} is needed): blunt the tip or round it",
             vertices[k],
+        )
+
+
+def _refuse_pinch(vertices: Floats, bulges: Floats, size: float) -> None:
+    """Raise where edges that are not neighbours come as near as to count as touching."""
+    n, gap = len(vertices), CLEARANCE * size
+    count = facet_counts(vertices, bulges, _FACET * size)
+    points = facets(vertices, bulges, _FACET * size) - vertices[0]
+    # each edge as a line of its chords, its end repeated from the next edge's start
+    edge = np.repeat(np.arange(n), count + 1)
+    within = np.arange(len(edge)) - np.repeat(np.cumsum(count + 1) - (count + 1), count + 1)
+    first = np.cumsum(count) - count
+    lines = shapely.linestrings(points[(first[edge] + within) % len(points)], indices=edge)
+    a, b = shapely.STRtree(lines).query(lines, predicate="dwithin", distance=gap)
+    # neighbours touch rightly, and so do two edges with nothing but a very short one between them
+    step = np.hypot(*(np.roll(vertices, -1, axis=0) - vertices).T)
+    ahead = (b - a) % n
+    wrong = (ahead > 1) & (ahead < n - 1)
+    wrong &= ~((ahead == 2) & (step[(a + 1) % n] < 10.0 * gap))
+    wrong &= ~((ahead == n - 2) & (step[(b + 1) % n] < 10.0 * gap))
+    if wrong.any():
+        k = int(np.flatnonzero(wrong)[0])
+        place = np.array(shapely.shortest_line(lines[a[k]], lines[b[k]]).coords[0]) + vertices[0]
+        raise _fail(
+            f"edges {a[k]} and {b[k]} touch at {{}} (nearer than {gap:g}): move them apart or cut the loop there",
+            place,
         )
 
 
