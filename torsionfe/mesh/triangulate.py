@@ -2,7 +2,14 @@
 
 Sides that are no edges of the Delaunay triangulation are split; then every triangle with a corner under
 25 degrees gets a point near its circumcentre, or, where a side bars the way to that point, splits the side.
-(Ruppert 1995; Chew 1993; off-centres: Uengoer 2004; sharp corners: Miller, Pav and Walkington 2003.)
+
+References
+----------
+Ruppert, A Delaunay refinement algorithm for quality 2-dimensional mesh generation, J. Algorithms 18 (1995).
+Chew, Guaranteed-quality mesh generation for curved surfaces, 9th Symp. Comput. Geometry (1993).
+Shewchuk, Delaunay refinement algorithms for triangular mesh generation, Comput. Geometry 22 (2002).
+Miller, Pav and Walkington, When and why Ruppert's algorithm works, 12th Int. Meshing Roundtable (2003).
+Üngör, Off-centers: a new type of Steiner points, LATIN (2004).
 """
 
 from __future__ import annotations
@@ -182,7 +189,7 @@ def _bad_triangles(draft: Draft, web: Web, kept: Ints, side_at: Ints) -> tuple[I
     start, end = p[bad, (short + 1) % 3], p[bad, (short + 2) % 3]
     length = np.sqrt(least[bad])
     normal = np.stack([-base[:, 1], base[:, 0]], axis=1) / length[:, None]
-    # the circumcentre, or nearer: where the shortest side would be seen under just the angle wanted
+    # the circumcentre, or nearer: where the shortest side is seen under just over the angle wanted (Üngör 2004)
     centre = np.sum((tip - start) * (tip - end), axis=1) * length / (2.0 * np.maximum(double[bad], 1e-300))
     height = np.minimum(centre, 0.475 * length / np.tan(0.5 * SMALLEST_ANGLE))
     return kept[bad], 0.5 * (start + end) + height[:, None] * normal, np.hypot(height, 0.5 * length)
@@ -268,7 +275,7 @@ def _insert(draft: Draft, points: Floats, reach: Floats) -> Draft:
 def _apart(points: Floats, reach: Floats) -> Bools:
     """Return a set of points of which none is within the reach of one with a shorter reach.
 
-    Luby (1986), the reach for a priority; a point's eight nearest neighbours stand for all.
+    Luby (1986), with the reach for a priority; a point's eight nearest neighbours stand for all.
     """
     order = np.lexsort((points[:, 1], points[:, 0], reach))
     rank = np.empty(len(points), dtype=np.int64)
