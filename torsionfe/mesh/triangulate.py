@@ -295,6 +295,9 @@ def _apart(points: Floats, reach: Floats) -> Bools:
 def _finish(edges: Edges, draft: Draft, triangles: Ints) -> TriMesh:
     """Return the draft as a mesh in the user's coordinates."""
     nodes = np.concatenate([edges.points(draft.node_edge, draft.node_t), draft.place(draft.free)])
+    # a free node that a bent side has overtaken is in no triangle; boundary nodes come first and all are
+    used = np.bincount(triangles.ravel(), minlength=len(nodes)) > 0
+    nodes, triangles = nodes[used], (np.cumsum(used) - 1)[triangles]
     p = nodes[triangles]
     opposite = p[:, [2, 0, 1]] - p[:, [1, 2, 0]]
     area = cross(opposite[:, 0], opposite[:, 1])
