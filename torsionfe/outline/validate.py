@@ -21,6 +21,7 @@ __all__ = ["CLEARANCE", "facets", "validate_loop", "validate_voids"]
 CLEARANCE = 1e-7
 _FACET = 1e-6
 _LARGEST_BULGE = 50.0
+_FLATTEST = 1e-9  # a bulge below is straight: its arc is nearer to the chord than points that count as one
 _LARGEST = 1e40  # length**6 and its inverse must stay finite
 _FARTHEST = 1e8  # from the origin, in sizes: beyond, rounding exceeds the clearance
 _CUSP = np.radians(0.5)
@@ -59,6 +60,7 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
     n = len(vertices)
     if len(bulges) != n:
         raise OutlineError(f"one bulge an edge is needed: {n} vertices but {len(bulges)} bulges")
+    bulges = np.where(np.abs(bulges) < _FLATTEST, 0.0, bulges)
     if n < (2 if np.any(bulges) else 3):
         raise OutlineError(f"a loop needs 3 vertices (2 where an edge is an arc), got {n}")
     steep = np.flatnonzero(np.abs(bulges) > _LARGEST_BULGE)
@@ -87,7 +89,7 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
         vertices, bulges = vertices[order], -bulges[(order - 1) % n]
     _refuse_cusps(vertices, bulges)
     _refuse_pinch(vertices, bulges, size)
-    return vertices.copy(), np.where(bulges == 0.0, 0.0, bulges)
+    return vertices.copy(), np.where(bulges == 0.0, 0.0, bulges)  # no negative zeros
 
 
 def _checked_size(vertices: Floats) -> float:
