@@ -242,6 +242,8 @@ def test_radii_round_the_corners(saved):
     assert_same_shape(expected, read_outline(saved("angle.csv", text)), rel=1e-14)
     clockwise = "\n".join(reversed(text.split()))
     assert_same_shape(expected, read_outline(saved("angle.csv", clockwise)), rel=1e-14)
+    with pytest.raises(ReadError, match=r"angle\.csv: the point \(40, 0\) has the radius 3 and is no corner"):
+        read_outline(saved("angle.csv", text.replace("80,0,0", "40,0,3\n80,0,0")))
     with pytest.raises(ReadError, match=r"angle\.csv: radius 40 does not fit at vertex 3 \(8, 8\)|radius 4"):
         read_outline(saved("angle.csv", text.replace("8,8,8", "8,8,90")))
 

@@ -15,7 +15,7 @@ from scipy.spatial import cKDTree
 
 from torsionfe.checks import Floats, Ints
 from torsionfe.errors import ReadError
-from torsionfe.outline.files.loops import RawLoop, Segments
+from torsionfe.outline.files.loops import SMALLEST, RawLoop, Segments
 from torsionfe.outline.validate import CLEARANCE
 
 __all__ = ["chain", "nodes_of"]
@@ -41,7 +41,7 @@ def chain(segments: Segments, tolerance: float | None = None) -> tuple[list[RawL
     """
     every = np.concatenate([segments.start, segments.end])
     size = float(np.ptp(every, axis=0).max()) if len(every) else 0.0
-    if size == 0.0:
+    if size < SMALLEST:
         raise ReadError("it holds no edge of any length")
     gap = _GAP * size if tolerance is None else tolerance
     label, points = nodes_of(every, CLEARANCE * size)

@@ -10,10 +10,12 @@ import numpy as np
 from torsionfe.checks import Floats
 from torsionfe.errors import ReadError
 
-__all__ = ["LARGEST", "Found", "RawLoop", "ReadOptions", "Segments"]
+__all__ = ["LARGEST", "SMALLEST", "Found", "RawLoop", "ReadOptions", "Segments"]
 
 #: The largest coordinate, radius or bulge: its fourth power still is a number.
 LARGEST = 1e70
+#: Smaller sizes, and bulges, are none.
+SMALLEST = 1e-70
 
 
 @dataclass(frozen=True)
@@ -131,7 +133,7 @@ class SegmentList:
         self.count += len(starts)
         if self.count > self.most:
             raise too_many(self.count, self.most)
-        self.parts.append((starts, ends, bulges[: len(starts)]))
+        self.parts.append((starts, ends, _told(bulges[: len(starts)])))
 
     def segments(self) -> Segments:
         """Return all edges in the order in which they were added."""
@@ -165,4 +167,9 @@ def closed_loop(points: Sequence[Sequence[float]] | Floats, bulges: Floats | Non
         raise ReadError(f"point {bad[0]} of a loop, ({x}, {y}), or its bulge is not finite, or above {LARGEST:g}")
     if len(array) > 1 and np.array_equal(array[0], array[-1]):
         array, turns = array[:-1], turns[: len(array) - 1]
-    return RawLoop(array, turns[: len(array)])
+    return RawLoop(array, _told(turns[: len(array)]))
+
+
+def _told(bulges: Floats) -> Floats:
+    """Return bulges without those too small to be one."""
+    return np.where(np.abs(bulges) < SMALLEST, 0.0, bulges)

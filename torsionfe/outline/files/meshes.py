@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 from torsionfe.checks import Floats, Ints
 from torsionfe.errors import ReadError
 from torsionfe.outline.files.chaining import chain, nodes_of
-from torsionfe.outline.files.loops import LARGEST, Found, RawLoop, ReadOptions, Segments, too_many
+from torsionfe.outline.files.loops import LARGEST, SMALLEST, Found, RawLoop, ReadOptions, Segments, too_many
 from torsionfe.outline.validate import CLEARANCE
 
 __all__ = ["boundary_of", "mesh_endings", "read_mesh"]
@@ -59,7 +59,7 @@ def read_mesh(path: Path, options: ReadOptions, kind: str = "", seconds: float =
 
 def _arrays(path: Path, kind: str, seconds: float) -> Arrays:
     worker = Path(__file__).with_name("mesh_worker.py")
-    command = [sys.executable, "-P", str(worker), str(path.resolve()), kind, str(max(1, round(seconds)))]
+    command = [sys.executable, "-P", str(worker), str(path.resolve()), kind, str(int(seconds) + 2)]
     try:
         done = subprocess.run(command, stdin=subprocess.DEVNULL, capture_output=True, timeout=seconds, check=False)
     except subprocess.TimeoutExpired:
@@ -121,11 +121,12 @@ def _boundary_edges(arrays: Arrays, points: Floats, options: ReadOptions) -> tup
     if not edges:
         raise ReadError("the mesh holds no triangle or quadrilateral")
     every = np.concatenate(edges)
-    named = np.unique(every)
+    halfway = np.concatenate(middles)
+    named = np.unique(np.concatenate([every.ravel(), halfway[halfway >= 0]]))
     if not (np.abs(points[named]) < LARGEST).all():
         raise ReadError(f"the mesh has a node with coordinates that are not finite, or above {LARGEST:g}")
     notes = _flat(points[named]) if len(named) else []
-    return *_once(every, np.concatenate(middles), points), notes
+    return *_once(every, halfway, points), notes
 
 
 def _cells(cells: NDArray[np.generic], count: int, kind: str) -> Ints:
@@ -143,7 +144,7 @@ def _once(edges: Ints, middle: Ints, points: Floats) -> tuple[Ints, Ints]:
     flat = points[:, :2]
     named = np.unique(edges)
     size = float(np.ptp(flat[named], axis=0).max()) if len(named) else 0.0
-    if size == 0.0:
+    if size < SMALLEST:
         raise ReadError("the mesh has no size in the x-y plane: turn it into that plane")
     label = np.full(len(points), -1)
     label[named], _ = nodes_of(flat[named], CLEARANCE * size)

@@ -8,10 +8,10 @@ import numpy as np
 import shapely
 from numpy.typing import NDArray
 
-from torsionfe.checks import Ints
+from torsionfe.checks import Floats, Ints
 from torsionfe.errors import OutlineError, ReadError
-from torsionfe.outline.files.loops import RawLoop
-from torsionfe.outline.fillets import round_corners
+from torsionfe.outline.files.loops import SMALLEST, RawLoop
+from torsionfe.outline.fillets import SMOOTH, round_corners
 from torsionfe.outline.outline import Outline
 
 __all__ = ["nest"]
@@ -64,18 +64,28 @@ def nest(loops: Sequence[RawLoop]) -> Outline:
 
 def _checked(loop: RawLoop) -> Outline:
     """Return the loop as an outline of its own, its corners rounded."""
+    if len(loop.vertices) and np.ptp(loop.vertices, axis=0).max() < SMALLEST:
+        raise ReadError(f"the loop at ({loop.place[0]:g}, {loop.place[1]:g}) has no size", loop.place)
     try:
         outline = Outline(loop.vertices, loop.bulges)
-        if loop.radii is None or not loop.radii.any():
-            return outline
-        # the outline may have turned the loop round: vertex 0 stays first
-        turned = not np.array_equal(outline.vertices, loop.vertices)
-        order = -np.arange(len(loop.radii)) % len(loop.radii) if turned else np.arange(len(loop.radii))
-        radii = {(0, k): (float(radius), "radius") for k, radius in enumerate(loop.radii[order])}
-        return round_corners(outline, radii)
+        return outline if loop.radii is None or not loop.radii.any() else _rounded(outline, loop, loop.radii)
     except OutlineError as error:
         x, y = loop.place
         raise ReadError(f"{error} (of the loop that starts at ({x:g}, {y:g}))", error.at or (x, y)) from error
+
+
+def _rounded(outline: Outline, loop: RawLoop, radii: Floats) -> Outline:
+    """Return an outline, made of the loop, with its vertices rounded by radii (n,)."""
+    # the outline may have turned the loop round: vertex 0 stays first
+    turned = not np.array_equal(outline.vertices, loop.vertices)
+    radii = radii[-np.arange(len(radii)) % len(radii)] if turned else radii
+    straight = np.abs(outline.edges.interior_angle - np.pi) <= SMOOTH
+    none = np.flatnonzero(straight & (radii > 0.0))
+    if len(none):
+        x, y = outline.vertices[none[0]]
+        radius = radii[none[0]]
+        raise ReadError(f"the point ({x:g}, {y:g}) has the radius {radius:g} and is no corner", (float(x), float(y)))
+    return round_corners(outline, {(0, k): (float(radius), "radius") for k, radius in enumerate(radii)})
 
 
 def _refuse_crossing(polygons: Shapes) -> None:
