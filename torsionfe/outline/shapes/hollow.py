@@ -191,10 +191,8 @@ def _pocket(k: int, given: tuple[float, float, float, float], sizes: Mapping[str
     if len(numbers) != 4:
         raise OutlineError(f"void {k} must be (left, bottom, width, height) or an Outline, got {given!r:.80}")
     left, bottom, wide, high = (float(value) for value in numbers)
-    less(f"void {k}: 0", 0.0, "its width", wide)
-    less(f"void {k}: 0", 0.0, "its height", high)
-    less(f"void {k}: 0", 0.0, "its left side's distance", left)
-    less(f"void {k}: 0", 0.0, "its bottom's distance", bottom)
+    named = zip(("left", "bottom", "width", "height"), (left, bottom, wide, high), strict=True)
+    above_zero(**{f"void {k}: {name}": value for name, value in named})
     less(f"void {k}: its right side at", left + wide, "the width", sizes["width"])
     less(f"void {k}: its top at", bottom + high, "the height", sizes["height"])
     return _panel((left, bottom, left + wide, bottom + high), sizes["inner_radius"], "inner_radius")

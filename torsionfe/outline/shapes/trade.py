@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
@@ -25,6 +26,7 @@ _SMALLEST = 1e-40
 _FILLETS = ("root_radius", "inner_radius")
 
 
+@dataclass(frozen=True, eq=False, repr=False)
 class TradeShape(Outline):
     """The outline of a trade shape, with its kind and dimensions.
 
