@@ -1,0 +1,1 @@
+"""The bar: twist, stiffness, allowables and margins, plastic torque, restrained warping, torsional buckling."""
