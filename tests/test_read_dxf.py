@@ -243,7 +243,9 @@ def test_what_is_on_layer_0_of_a_block_is_on_the_layer_of_its_insertion(drawing)
     space.add_blockref("HOLE", (20, 20), dxfattribs={"layer": "A"})
     space.add_blockref("HOLE", (40, 20), dxfattribs={"layer": "B"})
     assert len(read_outline(drawing(document), layers="A").voids) == 1
-    assert len(read_outline(drawing(document)).voids) == 2
+    result = read_outline_report(drawing(document))
+    assert len(result.outline.voids) == 2
+    assert result.notes == ("read from the layers 'A' (5), 'B' (1)",)
 
 
 def test_mirrored_planes(drawing):

@@ -96,7 +96,7 @@ def test_what_shapely_writes_comes_back(saved):
         ("POLYGON ((0 0, 9 0, 9 9, 0 9, 0 0), (20 20, 21 20, 21 21, 20 20))", "2 outer loops"),
         ("(" * 100_000, "is needed"),
         ("GEOMETRYCOLLECTION (" * 50_000, "is needed"),
-        ("POLYGON ((" + "0 0, " * 300_000, "above the limit of 100000"),
+        ("POLYGON ((" + "0 0, " * 300_000, "above the limit of 50000"),
         (b"POLYGON ((0 0, 30 0, \xff", r"no text in UTF-8 \(byte 21\)"),
         (b"POLYGON\0((0 0", "zero byte"),
     ],
@@ -198,7 +198,7 @@ def test_arcs_stay_true_when_the_coordinates_are_moved_and_are_told_of_when_not(
         (polygon(cross_section={"arcs": [{"ring": 0, "from": 0, "to": 9, "bulge": 1}]}), "names no stretch of a ring"),
         (polygon(cross_section={"arcs": [{"ring": 1, "from": 0, "to": 1, "bulge": 1}]}), "names no stretch of a ring"),
         (polygon(cross_section={"arcs": [7]}), "names no stretch of a ring"),
-        ("[" + "[0,0]," * 500_000 + "[0,0]]", "above the limit of 100000"),
+        ("[" + "[0,0]," * 500_000 + "[0,0]]", "above the limit of 50000"),
     ],
 )
 def test_texts_that_are_no_geojson_polygon(saved, found, message):
@@ -288,7 +288,7 @@ def test_the_unit_of_a_table(saved, head):
         ("x,radius\n0,0\n", "the columns must be x and y"),
         ("0,0\n30,0\n", "a loop needs 3 vertices"),
         ("0,0\n10,10\n10,0\n0,10", r"crosses itself at \(5, 5\)"),
-        ("0,0\n" * 200_000, "above the limit of 100000"),
+        ("0,0\n" * 200_000, "above the limit of 50000"),
     ],
 )
 def test_tables_that_are_none(saved, text, message):

@@ -9,9 +9,6 @@ gap.
 from __future__ import annotations
 
 import numpy as np
-from scipy.sparse import coo_array
-from scipy.sparse.csgraph import connected_components
-from scipy.spatial import cKDTree
 
 from torsionfe.checks import Floats, Ints
 from torsionfe.errors import ReadError
@@ -59,6 +56,10 @@ def nodes_of(points: Floats, radius: float) -> tuple[Ints, Floats]:
 
     Points are gathered in small cells first, so that a heap of points in one place costs no more than one.
     """
+    from scipy.sparse import coo_array
+    from scipy.sparse.csgraph import connected_components
+    from scipy.spatial import cKDTree
+
     cell = np.floor((points - points.min(axis=0)) / (0.5 * radius)).astype(np.int64)
     _, first, of_cell = np.unique(cell, axis=0, return_index=True, return_inverse=True)
     pairs = cKDTree(points[first]).query_pairs(2.5 * radius, output_type="ndarray")
@@ -158,6 +159,8 @@ def _pairs(open_: Ints, apart: set[tuple[int, int]], points: Floats, gap: float)
 
 def _nearest(points: Floats, count: int) -> tuple[Floats, Ints]:
     """Return the distances to the nearest ``count`` points, itself among them, and which they are."""
+    from scipy.spatial import cKDTree
+
     distance, index = cKDTree(points).query(points, k=np.arange(1, count + 1))
     return np.asarray(distance, dtype=float), np.asarray(index, dtype=np.int64)
 

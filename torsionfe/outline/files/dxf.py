@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import io
 import logging
+import re
 from collections import Counter
 from collections.abc import Iterator
 from dataclasses import dataclass, field
@@ -28,6 +29,8 @@ __all__ = ["dxf_text", "read_dxf"]
 _BINARY = b"\r\n\x1a\x00"
 _DEEPEST = 16
 _ENTITIES_PER_EDGE = 2
+_ITEMS_PER_EDGE = 4
+_ITEM = re.compile(rb"\n[ ]*0\r?\n")
 _FLAT = 1e-6
 
 #: ``$INSUNITS`` of the header: its number for each unit that is known here.
@@ -65,7 +68,7 @@ def read_dxf(path: Path, data: bytes, options: ReadOptions) -> Found:
     ReadError
         It is no DXF file, is cut short or damaged, or its lines make no closed loops.
     """
-    document, notes, warnings = _document(path, data)
+    document, notes, warnings = _document(path, data, options)
     sheet = _Sheet(options, Pen(SegmentList(options.max_edges), options.curve_tolerance))
     try:
         _draw(sheet, document)
@@ -83,7 +86,7 @@ def _short(error: BaseException) -> str:
     return f"{type(error).__name__}: {error}"[:200]
 
 
-def _document(path: Path, data: bytes) -> tuple[Any, list[str], list[str]]:
+def _document(path: Path, data: bytes, options: ReadOptions) -> tuple[Any, list[str], list[str]]:
     """Return the document, notes on repairs, and warnings of what they may have left out."""
     try:
         import ezdxf
@@ -93,6 +96,14 @@ def _document(path: Path, data: bytes) -> tuple[Any, list[str], list[str]]:
         raise MissingExtraError("reading a DXF file needs ezdxf: pip install ezdxf") from error
     if not data[-64:].rstrip(b"\x00\r\n\t \x1a").endswith(b"EOF"):
         raise ReadError("it is no DXF file or is cut short: the last line of one is EOF")
+    # counted before the library sees it, which takes a second for ten thousand
+    items = sum(1 for _ in _ITEM.finditer(data))
+    if items > _ITEMS_PER_EDGE * options.max_edges:
+        most = _ITEMS_PER_EDGE * options.max_edges
+        raise ReadError(
+            f"it has {items} entries, above the limit of {most}: take away what is no boundary, or pass a larger "
+            "max_edges="
+        )
     try:
         logging.getLogger("ezdxf").addHandler(logging.NullHandler())  # what it finds is told in the result
         if data[18:22] == _BINARY:
@@ -144,10 +155,12 @@ class _Sheet:
         return layer.lower() not in self.off
 
     def notes(self) -> list[str]:
-        """Return what was left out."""
+        """Return what was read and what was left out."""
+        several = self.options.layers is None and len(self.layers) > 1
+        read = [f"read from the layers {_tally(self.layers)}"] if several else []
         left = [f"left out {sum(self.hidden.values())} entities of hidden layers ({_tally(self.hidden)})"]
         other = [f"left out what is no boundary: {_tally(self.ignored)}"]
-        return (left if self.hidden else []) + (other if self.ignored else [])
+        return read + (left if self.hidden else []) + (other if self.ignored else [])
 
     def refuse_nothing(self) -> None:
         """Raise where no entity, or none of the layers asked for, was drawn."""

@@ -5,15 +5,17 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
-from scipy.interpolate import BSpline
 
 from torsionfe.checks import Floats
 from torsionfe.errors import OutlineError, ReadError
 from torsionfe.outline.biarcs import Curve, fit_curve
 from torsionfe.outline.files.loops import SegmentList
+
+if TYPE_CHECKING:
+    from scipy.interpolate import BSpline
 
 __all__ = ["ENTITIES", "FLAT_ONLY", "Pen"]
 
@@ -156,6 +158,8 @@ def _ellipse(entity: Any, pen: Pen) -> None:
 
 
 def _spline(entity: Any, pen: Pen) -> None:
+    from scipy.interpolate import BSpline
+
     if max(len(entity.control_points), len(entity.fit_points)) > _MOST_POINTS:
         raise ReadError(f"a SPLINE has over {_MOST_POINTS} points")
     if not 1 <= int(entity.dxf.get("degree", 3)) <= _MOST_DEGREE:

@@ -38,8 +38,9 @@ def read_geojson(text: str, options: ReadOptions) -> Found:
     ReadError
         It is no JSON, holds no polygon or several, or a ring is open.
     """
-    if text.count("[") > 4 * options.max_edges:
-        raise too_many(text.count("["), options.max_edges)
+    parts = sum(text.count(sign) for sign in "[{:")
+    if parts > 8 * options.max_edges:
+        raise too_many(parts // 8, options.max_edges)
     try:
         found = json.loads(text, parse_constant=_no_constant)
     except ReadError:

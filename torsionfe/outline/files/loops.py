@@ -37,7 +37,7 @@ class ReadOptions:
     layers: tuple[str, ...] | None = None
     tolerance: float | None = None
     curve_tolerance: float | None = None
-    max_edges: int = 100_000
+    max_edges: int = 50_000
 
 
 @dataclass(frozen=True)

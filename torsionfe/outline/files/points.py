@@ -26,6 +26,7 @@ _UNIT_LINE = re.compile(r"#\s*unit\s*[:=]\s*(?P<unit>.+)", re.IGNORECASE)
 _COLUMNS = ("x", "y", "radius", "loop", "bulge")
 _LENGTHS = ("x", "y", "radius")
 _SPARE_LINES = 1000
+_LONGEST_LINE = 2000
 
 
 @dataclass(frozen=True)
@@ -52,6 +53,9 @@ def read_points(text: str, options: ReadOptions) -> Found:
     lines, unit = _lines(text)
     if not lines:
         raise ReadError("it holds no points")
+    long = next((number for number, line in lines if len(line) > _LONGEST_LINE), None)
+    if long is not None:
+        raise ReadError(f"line {long} is longer than {_LONGEST_LINE} characters: it is no table of points")
     sign = next((sign for sign in ";\t," if sign in lines[0][1]), None)
     rows = [(number, _cells(line, sign)) for number, line in lines]
     head = _head(rows[0], sign)

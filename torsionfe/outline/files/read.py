@@ -144,7 +144,7 @@ def read_outline_report(
     facet_tolerance: float | None = None,
     curve_tolerance: float | None = None,
     max_bytes: int = 50_000_000,
-    max_edges: int = 100_000,
+    max_edges: int = 50_000,
     max_seconds: float = 20.0,
 ) -> ReadResult:
     """Return the outline that a file holds, with all that was found and done on the way.

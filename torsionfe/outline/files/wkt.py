@@ -27,6 +27,8 @@ _DIMENSIONS = ("Z", "M", "ZM")
 _WRAPS = ("MULTIPOLYGON", "MULTISURFACE", "GEOMETRYCOLLECTION")
 _CURVES = ("LINESTRING", "CIRCULARSTRING", "COMPOUNDCURVE")
 _JOINED = 1e-9
+_MOST_NUMBERS = 4
+_LONGEST_TOKEN = 400
 
 Path = tuple[Floats, Floats]  # points (n, 2) and bulges (n - 1,)
 
@@ -73,6 +75,8 @@ class _Reader:
             if self.at_end():
                 return ""
             raise self.unexpected("a number, a word or a bracket")
+        if found.end() - found.start(1) > _LONGEST_TOKEN:
+            raise self.unexpected(f"a number or word of at most {_LONGEST_TOKEN} characters")
         self.at = found.end()
         return found[1].upper()
 
@@ -153,6 +157,8 @@ def _points(reader: _Reader) -> Floats:
         if token[:1] not in _OF_NUMBER or not abs(float(token)) < LARGEST:
             raise reader.unexpected("a finite number", token or "the end")
         rows[-1].append(float(token))
+        if len(rows[-1]) > _MOST_NUMBERS:
+            raise reader.unexpected("a comma or a bracket after at most 4 numbers", token)
     points = np.array(rows)
     if points.shape[1] > 2:
         _flat(reader, points)
