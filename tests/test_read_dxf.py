@@ -657,3 +657,73 @@ def test_reading_says_nothing_on_the_terminal(drawing, capfd, tmp_path):
     assert capfd.readouterr() == ("", "")
 
 
+
+
+# --- entities with numbers that make no sense ----------------------------------------------------------
+
+
+def bare(*entities):
+    """The text of a drawing that holds nothing but entities, each a list of tags."""
+    tags = [(0, "SECTION"), (2, "ENTITIES"), *(tag for entity in entities for tag in entity), (0, "ENDSEC"), (0, "EOF")]
+    return "".join(f"{code}\n{value}\n" for code, value in tags)
+
+
+SPLINE = [(0, "SPLINE"), (8, "0"), (70, 0), (71, 2), (72, 6), (73, 3)]
+KNOTS = [(40, 0), (40, 0), (40, 0), (40, 1), (40, 1), (40, 1)]
+POINTS = [(10, 0), (20, 0), (30, 0), (10, 5), (20, 5), (30, 0), (10, 10), (20, 0), (30, 0)]
+
+
+@pytest.mark.parametrize(
+    ("entity", "message"),
+    [
+        ([(0, "CIRCLE"), (8, "0"), (10, 3), (20, 4), (40, 0)], r"the CIRCLE at \(3, 4\) has the radius 0"),
+        ([(0, "CIRCLE"), (8, "0"), (10, 3), (20, 4), (40, -2)], r"the CIRCLE at \(3, 4\) has the radius -2"),
+        ([(0, "ARC"), (8, "0"), (10, 3), (20, 4), (40, 1), (50, "nan"), (51, 9)], "has the radius 1|damaged"),
+        ([(0, "LINE"), (8, "0"), (10, 0), (20, 0), (30, "inf"), (11, 5), (21, 5), (31, 0)], "not flat|not a finite"),
+        ([(0, "ELLIPSE"), (8, "0"), (10, 3), (20, 4), (11, 0), (21, 0), (31, 0), (40, 1)], "has no size|damaged"),
+        ([(0, "ELLIPSE"), (8, "0"), (10, 3), (20, 4), (11, 5), (21, 0), (31, 2), (40, 1)], "tilted out of the plane"),
+        ([*SPLINE[:3], (71, 60), *SPLINE[4:], *KNOTS, *POINTS], "has the degree 60|damaged"),
+        ([*SPLINE, *KNOTS[:3], (40, -1), (40, 1), (40, 1), *POINTS], "do not fit its points|damaged"),
+        ([*SPLINE, *KNOTS, (41, 1), (41, 0), (41, 1), *POINTS], "a weight of 0 or less|damaged"),
+        ([*SPLINE, *KNOTS, *POINTS[:3], (10, "nan"), *POINTS[4:]], "not finite|damaged"),
+        ([(0, "INSERT"), (8, "0"), (2, "NONE"), (10, 0), (20, 0)], "the block 'NONE' is not in the drawing|damaged"),
+    ],
+)
+def test_entities_that_make_no_sense(tmp_path, entity, message):
+    path = tmp_path / "strange.dxf"
+    path.write_text(bare(entity))
+    with pytest.raises(ReadError, match=message):
+        read_outline(path)
+
+
+def test_points_without_a_line_are_no_boundary(drawing):
+    document, space = new()
+    add_plate(space)
+    space.add_lwpolyline([(5, 5)])
+    space.add_polyline2d([(5, 5)])
+    space.add_open_spline([(5, 5, 0)] * 4)
+    assert_same(PLATE, read_outline(drawing(document)))
+
+
+def test_the_frame_of_a_smoothed_polyline_is_no_part_of_it(drawing):
+    # flag 16 marks the points of the control frame, which is not drawn
+    document, space = new()
+    polyline = space.add_polyline2d([(99, 99), *PLATE.vertices.tolist()], close=True)
+    polyline.vertices[0].dxf.flags |= 16
+    assert_same(PLATE, read_outline(drawing(document)))
+
+
+def test_drawings_of_too_many_loops(drawing):
+    document, space = new()
+    for x in range(40):
+        for y in range(26):
+            space.add_circle((x, y), 0.2)
+    with pytest.raises(ReadError, match="holds 1040 loops, above the limit of 1000"):
+        read_outline(drawing(document))
+
+
+def test_drawings_of_too_many_entries(tmp_path):
+    path = tmp_path / "large.dxf"
+    path.write_text(bare(*([(0, "POINT"), (8, "0"), (10, k), (20, k)] for k in range(1000))))
+    with pytest.raises(ReadError, match="entries, above the limit of 800"):
+        read_outline(path, max_edges=200)

@@ -132,7 +132,7 @@ def _round(entity: Any, pen: Pen, first: float, last: float) -> None:
 def _ellipse(entity: Any, pen: Pen) -> None:
     side = _side(entity)
     centre, major = np.array(entity.dxf.center, dtype=float), np.array(entity.dxf.major_axis, dtype=float)
-    ratio, first, last = (float(entity.dxf.get(name)) for name in ("ratio", "start_param", "end_param"))
+    ratio, first, last = float(entity.dxf.ratio), float(entity.dxf.start_param), float(entity.dxf.end_param)
     length = float(np.hypot(major[0], major[1]))
     if not (0.0 < length < math.inf and 0.0 < abs(ratio) < math.inf and math.isfinite(first + last)):
         raise ReadError(f"the ELLIPSE at ({centre[0]:g}, {centre[1]:g}) has no size", _at(centre))
