@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
+from functools import cached_property
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -75,6 +76,7 @@ class Outline:
         if holes:
             validate_voids(self, holes)
             object.__setattr__(self, "voids", holes)
+            self.__dict__.pop("edges", None)  # those without the voids
 
     @classmethod
     def from_polygon(cls, polygon: Polygon) -> Outline:
@@ -99,7 +101,8 @@ class Outline:
         part = polygon
         if isinstance(part, MultiPolygon) and not part.is_empty:
             if len(part.geoms) > 1:
-                places = ", ".join(f"({piece.centroid.x:g}, {piece.centroid.y:g})" for piece in part.geoms[:5])
+                centres = [piece.centroid for piece in list(part.geoms)[:5]]
+                places = ", ".join(f"({centre.x:g}, {centre.y:g})" for centre in centres)
                 raise OutlineError(
                     f"the polygon has {len(part.geoms)} parts, around {places}: a cross-section is one piece, "
                     "so choose one of polygon.geoms"
@@ -114,10 +117,13 @@ class Outline:
 
     # --- what it is -----------------------------------------------------------------------------------
 
-    @property
+    @cached_property
     def edges(self) -> Edges:
-        """Every edge of every loop, the material on the left."""
-        return edges_of(self)
+        """Every edge of every loop, the material on the left; its arrays are read-only."""
+        edges = edges_of(self)
+        for field in fields(edges):
+            getattr(edges, field.name).flags.writeable = False
+        return edges
 
     @property
     def area(self) -> float:
@@ -130,12 +136,12 @@ class Outline:
         x, y = self.edges.moments()[1]
         return float(x), float(y)
 
-    @property
+    @cached_property
     def bounds(self) -> tuple[float, float, float, float]:
         """Extent ``(x_min, y_min, x_max, y_max)``, the arcs' bellies included."""
-        edges = edges_of(self) if not self.voids else edges_of(Outline(self.vertices, self.bulges))
+        edges = self.edges
         points = [self.vertices]
-        curved = edges.bulge != 0.0
+        curved = (edges.bulge != 0.0) & (edges.loop == 0)
         if curved.any():
             p, q, b = edges.start[curved], edges.end[curved], edges.bulge[curved]
             centre, radius, turn = arcs.arc_centre(p, q, b), arcs.arc_radius(p, q, b), arcs.sweep(b)

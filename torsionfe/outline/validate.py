@@ -81,7 +81,7 @@ def validate_loop(vertices: Floats, bulges: Floats) -> tuple[Floats, Floats]:
         raise _fail(f"vertices {k} and {twin} are the same point, {{}}: remove one{closing}", vertices[k])
     area = _signed_area(vertices, bulges)
     ring = facets(vertices, bulges, _FACET * size)
-    if abs(area) <= 1e-12 * size**2 and shapely.LinearRing(ring).is_simple:
+    if shapely.convex_hull(shapely.LinearRing(ring - ring[0])).area <= 1e-12 * size**2:
         raise _fail("the loop encloses no area (near {}): its vertices lie on one line", vertices[0])
     _refuse_crossing(ring, size)
     if area < 0.0:
