@@ -274,11 +274,13 @@ class Outline:
 
     # --- comparing and showing ------------------------------------------------------------------------
 
-    def plot(self, ax: Axes | None = None, *, unit: str = "", vertex_numbers: bool = True) -> OutlinePlot:
+    def plot(
+        self, ax: Axes | None = None, *, unit: str = "", vertex_numbers: bool = True, dimensions: bool = True
+    ) -> OutlinePlot:
         """Draw the outline with overall dimensions and vertex numbers; see `plot_outline`."""
         from torsionfe.output.outline_plot import plot_outline
 
-        return plot_outline(self, ax, unit=unit, vertex_numbers=vertex_numbers)
+        return plot_outline(self, ax, unit=unit, vertex_numbers=vertex_numbers, dimensions=dimensions)
 
     def matches(self, other: Outline, tolerance: float | None = None) -> bool:
         """Return whether another outline has the same loops, wherever they start and in any order.
