@@ -16,7 +16,7 @@ from torsionfe.checks import Floats
 
 __all__ = ["Circle", "Line", "fit_circle"]
 
-_STEPS = 6
+_STEPS = 3
 
 
 @dataclass(frozen=True)
@@ -87,7 +87,7 @@ def fit_circle(points: Floats, side: float = 1.0, tangents: Sequence[Line] = ())
         slope = np.column_stack([-away / distance[:, None], -np.ones(len(x))]) @ free
         step = np.linalg.lstsq(slope, z[2] - distance, rcond=None)[0]
         z = z + free @ step
-        if np.abs(step).max() < 1e-15:
+        if np.abs(step).max() < 1e-13:
             break
     if not np.isfinite(z).all() or z[2] <= 0.0:
         return None
