@@ -112,7 +112,7 @@ def test_distance_between_voids(first, second, distance):
     assert found[1, 2] <= distance + 1e-12
 
 
-@settings(max_examples=15, deadline=None)
+@settings(max_examples=8, deadline=None)
 @given(st.lists(st.floats(2.0, 10.0), min_size=5, max_size=14))
 def test_stars_agree_with_their_levels(radii):
     angle = np.linspace(0, 2 * np.pi, len(radii), endpoint=False)

@@ -22,7 +22,7 @@ class Section:
     """A section by its numbers."""
 
     outline: object = field(default_factory=lambda: shapes.wide_flange(300, 150, 10.7, 7.1))
-    torsion_constant: Bounds = Bounds(2.0e5, 2.0e5)
+    torsion_constant: Bounds = field(default_factory=lambda: Bounds(2.0e5, 2.0e5))
     warping_constant: float = 1.26e11
     warping_extremes: tuple = (-1.1e4, 1.1e4)
     centre_of_twist: tuple = (0.0, 0.0)
