@@ -4,6 +4,8 @@ from __future__ import annotations
 
 __all__ = [
     "InputError",
+    "JournalError",
+    "JobError",
     "MeshError",
     "MissingExtraError",
     "OutlineError",
@@ -49,6 +51,30 @@ class OutlineWarning(UserWarning):
 
 class ReadError(OutlineError):
     """A file does not hold a readable outline."""
+
+
+class JobError(InputError):
+    """A job file holds something that it may not.
+
+    Parameters
+    ----------
+    message : str
+        What was found and what is allowed; it begins with the file and the line.
+    line : int, optional
+        Of the job file, from 1.
+    """
+
+    def __init__(self, message: str, line: int = 0) -> None:
+        super().__init__(message)
+        self.line = line
+
+    def __reduce__(self) -> tuple[object, ...]:
+        """Keep the line when the error crosses a process boundary."""
+        return type(self), (str(self), self.line)
+
+
+class JournalError(InputError):
+    """The journal of a sweep can't be used: it is locked, another file, of another study, or can't be written."""
 
 
 class UnitError(InputError):

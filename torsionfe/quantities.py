@@ -98,7 +98,7 @@ def parse_quantity(name: str, given: Any, kind: str) -> Quantity:
     match = _NUMBER.match(given) if len(given) <= _LONGEST else None
     if match is None:
         raise UnitError(f"{name} must be a number with a unit, such as {_EXAMPLES[kind]!r}, got {given[:_LONGEST]!r}")
-    value, unit = finite(name, match[1]), match[2]
+    value, unit = finite(name, float(match[1])), match[2]
     return Quantity(value * _si(name, unit, kind), kind, unit) if unit else Quantity(value, kind)
 
 

@@ -28,8 +28,10 @@ def store(path: str | os.PathLike[str], data: bytes) -> Path:
             handle.flush()
             os.fsync(handle.fileno())
         os.replace(beside, target)
-    except (OSError, ValueError) as error:
+    except BaseException as error:  # an interrupt leaves no half-written file either
         with contextlib.suppress(OSError, ValueError):
             beside.unlink()
+        if not isinstance(error, (OSError, ValueError)):
+            raise
         raise InputError(f"{str(target)!r} cannot be written: {getattr(error, 'strerror', error)}") from error
     return target

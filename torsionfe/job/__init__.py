@@ -1,0 +1,1 @@
+"""The job file: read, checked, run, and turned into a calculation sheet."""
