@@ -33,7 +33,10 @@ from torsionfe.outline.outline import Outline
 HANG = 20  # seconds after which a file counts as one that hangs
 MEMORY = 4 * 2**30
 NUMBER = re.compile(rb"[-+]?[0-9]+\.?[0-9]*(?:[eE][-+]?[0-9]+)?")
-PLACE = re.compile(r"\b(?:line|char|character|byte|ring|point|loop|layer|node|end of)\b")
+#: A numbered place in the file, or coordinates.
+PLACE = re.compile(
+    r"\b(?:line|char|character|byte|ring|point|vertices|node|column):? -?[0-9]|\(-?[0-9.e+-]+, -?[0-9.e+-]+\)"
+)
 STRANGE = [
     b"nan", b"inf", b"-inf", b"1e308", b"-1e308", b"1e400", b"1e-320", b"0", b"-0.0", b"-1", b"1", b"2", b"7", b"64",
     b"255", b"65536", b"2147483648", b"99999999999999999999", b"1e17", b"0x10", b"", b"abc", b"1_0", b"1,5", b"\xff",
@@ -252,8 +255,9 @@ def outcome(path):
             warnings.simplefilter("error")
             read_outline_report(path)
     except TorsionError as error:
-        named = getattr(error, "at", None) or PLACE.search(str(error))
-        return "error with a place" if named else "error", None
+        if getattr(error, "at", None):
+            return "at coordinates", None
+        return "at a line" if PLACE.search(str(error)) else "no place", None
     except Exception as error:
         return "other exception", error
     return "outline", None
@@ -286,15 +290,16 @@ def main(count, kinds):
     reader = LastingReader(1.0)
     meshes._arrays = reader
     total = []
-    print("format    files  outline   error at a place  other slowest, s  peak, MB")
+    print("each error is a typed one; at: its coordinates, or a line, character or point that its message names")
+    print("format    files  outline  at x, y  at a line  no place  other  slowest, s  peak, MB")
     with tempfile.TemporaryDirectory() as name:
         for kind in kinds:
             before = reader.restarts
             tally, slowest, bad = fuzz(kind, count, 1, pathlib.Path(name), reader)
             peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
             print(
-                f"{kind:8s} {count:6d} {tally['outline']:8d} {tally['error']:7d} {tally['error with a place']:10d} "
-                f"{tally['other exception']:6d} {slowest:10.2f} {peak:9.0f}"
+                f"{kind:8s} {count:6d} {tally['outline']:8d} {tally['at coordinates']:8d} {tally['at a line']:10d} "
+                f"{tally['no place']:9d} {tally['other exception']:6d} {slowest:11.2f} {peak:9.0f}"
                 + (f"  (reader stopped {reader.restarts - before} times)" if reader.restarts > before else ""),
                 flush=True,
             )

@@ -21,5 +21,5 @@ def test_mutated_files_end_in_an_outline_or_a_typed_error(kind, tmp_path, monkey
     finally:
         reader.stop()
     assert bad == []
-    assert tally["error"] + tally["error with a place"] > 0
+    assert tally["outline"] < sum(tally.values())
     assert slowest < 5.0

@@ -95,7 +95,9 @@ def _document(path: Path, data: bytes, options: ReadOptions) -> tuple[Any, list[
     except ImportError as error:
         raise MissingExtraError("reading a DXF file needs ezdxf: pip install ezdxf") from error
     if not data[-64:].rstrip(b"\x00\r\n\t \x1a").endswith(b"EOF"):
-        raise ReadError("it is no DXF file or is cut short: the last line of one is EOF")
+        lines = data.splitlines() or [b""]
+        last = lines[-1][:40].decode(errors="replace")
+        raise ReadError(f"it is no DXF file or is cut short: its last line, line {len(lines)}, is {last!r} and not EOF")
     # counted before the library sees it, which takes a second for ten thousand
     items = sum(1 for _ in _ITEM.finditer(data))
     if items > _ITEMS_PER_EDGE * options.max_edges:

@@ -294,7 +294,7 @@ def _found(file: Path, kind: str, options: ReadOptions, most: int, seconds: floa
     except UnicodeDecodeError as error:
         raise ReadError(f"it is no text in UTF-8 (byte {error.start})") from None
     if "\0" in text:
-        raise ReadError("it is no text: it holds a zero byte")
+        raise ReadError(f"it is no text: it holds a zero byte (character {text.index(chr(0))})")
     return _TEXTS[kind](text.replace("\r\n", "\n").replace("\r", "\n"), options)
 
 
