@@ -51,7 +51,8 @@ def one_of(name: str, value: Any, allowed: Sequence[str]) -> str:
     """Return ``value`` if it is one of ``allowed``, or raise `InputError` naming the nearest."""
     if value in allowed:
         return str(value)
-    near = get_close_matches(str(value), allowed, n=1)
+    text = str(value)
+    near = [word for word in allowed if word.lower() == text.lower()] or get_close_matches(text, allowed, n=1)
     hint = f"; did you mean {near[0]!r}?" if near else ""
     raise InputError(f"{name} must be one of {', '.join(map(repr, allowed))}, got {value!r}{hint}")
 

@@ -3,9 +3,13 @@
 from __future__ import annotations
 
 import math
+import unicodedata
 from collections.abc import Iterable, Sequence
 
-__all__ = ["number", "percent", "table"]
+__all__ = ["number", "percent", "printable", "table"]
+
+#: Marks that turn the direction of the text after them, and the byte order mark: shown, never obeyed.
+_HIDDEN = {*range(0x202A, 0x202F), *range(0x2066, 0x206A), 0xFEFF, *range(0xE0000, 0xE0080)}
 
 
 def number(value: float, digits: int = 4) -> str:
@@ -30,6 +34,25 @@ def percent(ratio: float, digits: int = 2) -> str:
     ('1.2 %', '-50 %', '0 %')
     """
     return f"{ratio * 100.0:.{digits}g} %" if math.isfinite(ratio) else number(ratio)
+
+
+def printable(text: str) -> str:
+    r"""Return text that only prints: line breaks stay, what would steer a printer or reader is written out.
+
+    Examples
+    --------
+    >>> printable("a\tb\u202ec")
+    'a b[U+202E]c'
+    """
+    lines = text.replace("\r\n", "\n").replace("\r", "\n").replace("\t", " ")
+    return "".join(f"[U+{ord(sign):04X}]" if _steers(sign) else sign for sign in lines)
+
+
+def _steers(sign: str) -> bool:
+    code = ord(sign)
+    if sign == "\n" or 0x20 <= code < 0x7F:
+        return False
+    return unicodedata.category(sign) in ("Cc", "Cs", "Zl", "Zp") or code in _HIDDEN or code & 0xFFFE == 0xFFFE
 
 
 def table(rows: Iterable[Sequence[str]], title: str = "", head: bool = False) -> str:

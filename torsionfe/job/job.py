@@ -127,10 +127,10 @@ class Outputs:
 
 @dataclass(frozen=True, slots=True)
 class SweepPlan:
-    """Dimensions of the trade shape to vary, each with its values (length, or plain numbers)."""
+    """Dimensions of the trade shape to vary, each with its values (length, or plain numbers), and what to draw."""
 
     grid: Mapping[str, tuple[float, ...]]
-    hand: bool = True
+    maps: tuple[str, ...]
 
 
 @dataclass(frozen=True)

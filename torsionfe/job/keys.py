@@ -7,10 +7,20 @@ from collections.abc import Mapping
 from functools import cache
 from types import MappingProxyType
 
-__all__ = ["KEYS", "SHAPES", "SHEET_SECTIONS", "shape_keys"]
+__all__ = ["KEYS", "SHAPES", "SHEET_SECTIONS", "SWEEP_MAPS", "shape_keys"]
 
 #: Sections of the sheet that a job may choose from, in their order on the paper.
 SHEET_SECTIONS = ("section", "inputs", "method", "constant", "stress", "hand", "bar", "sensitivity", "references")
+
+#: Columns of a sweep that can be drawn, the usual ones first.
+SWEEP_MAPS = (
+    "torsion_constant",
+    "stress_per_torque",
+    "hand_error",
+    "hand_stress_error",
+    "section_modulus",
+    "area",
+)
 
 #: Trade shapes that a job may name, the functions of `torsionfe.outline.shapes`.
 SHAPES = (
@@ -137,7 +147,7 @@ _TABLES: dict[str, dict[str, str]] = {
     },
     "sweep": {
         "grid": "dimensions of the trade shape to vary, each with its values",
-        "hand": "whether to set the hand method beside each section (true)",
+        "maps": f"what to draw over the grid: {', '.join(SWEEP_MAPS)}",
     },
     "sweep.grid.*": {
         "from": "first value",

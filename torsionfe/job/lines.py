@@ -89,9 +89,9 @@ class _Scan:
         path: Path = ()
         for k, key in enumerate(keys):
             path += (key,)
+            self.lines.setdefault(path, self.tokens[self.at - 1][2])
             if array and k == len(keys) - 1:
                 self.counts[path] = self.counts.get(path, 0) + 1
-                self.lines.setdefault(path, self.tokens[self.at - 1][2])
             if path in self.counts:
                 path += (self.counts[path] - 1,)
         return path

@@ -16,7 +16,7 @@ from torsionfe.closed_form.plates import Plate
 from torsionfe.closed_form.rectangle import RULES
 from torsionfe.errors import JobError
 from torsionfe.job.job import Hand, Heading, Job, JobBar, Material, Outputs, Segment, SheetChoice, SweepPlan, Tolerance
-from torsionfe.job.keys import KEYS, SHEET_SECTIONS, shape_keys
+from torsionfe.job.keys import KEYS, SHEET_SECTIONS, SWEEP_MAPS, shape_keys
 from torsionfe.job.lines import key_lines
 from torsionfe.job.places import MOST_BYTES, InputFile, read_bytes
 from torsionfe.job.section import JobSection, read_section
@@ -325,7 +325,7 @@ def _sweep(top: Table, section: JobSection) -> SweepPlan | None:
         total *= len(column)
     if total > 1_000_000:
         raise table.error("grid", f"sweep.grid has {total} sections; 1000000 at most")
-    return SweepPlan(values, table.flag("hand", True))
+    return SweepPlan(values, table.choices("maps", SWEEP_MAPS, SWEEP_MAPS[:4]))
 
 
 def _values(grid: Table, key: str, kind: str) -> tuple[float, ...]:
@@ -350,8 +350,10 @@ def _values(grid: Table, key: str, kind: str) -> tuple[float, ...]:
         raise table.error("to", f"{table.name()}: 'from' and 'to' must differ, and be above 0 for spacing = 'ratio'")
     steps = [k / (count - 1) for k in range(count)]
     if ratio:
-        return tuple(first * (last / first) ** step for step in steps)
-    return tuple((1.0 - step) * first + step * last for step in steps)
+        found = [first * (last / first) ** step for step in steps]
+    else:
+        found = [(1.0 - step) * first + step * last for step in steps]
+    return tuple(float(f"{value:.12g}") for value in found)  # 8, not 7.999999999999999
 
 
 def _value(table: Table, path: tuple[str | int, ...], given: Any, kind: str) -> float:

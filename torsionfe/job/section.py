@@ -67,8 +67,10 @@ def read_section(holder: Table, key: str = "outline") -> JobSection:
         None or several sources, a value that is out of range, an outline that cannot be built.
     """
     data = holder.data.get(key)
-    shape = data.get("shape") if isinstance(data, dict) else None
-    dimensions = list(shape_keys(shape)) if shape in SHAPES else []
+    dimensions: list[str] = []
+    if isinstance(data, dict) and "shape" in data:
+        every = Table(holder.source, (*holder.path, key), data, list(data))
+        dimensions = list(shape_keys(every.choice("shape", SHAPES)))
     table = holder.table(key, list(dict.fromkeys([*KEYS["outline"], *dimensions])))
     if table is None:
         holder.need(key)

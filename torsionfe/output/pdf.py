@@ -13,17 +13,17 @@ from functools import cache, lru_cache
 from itertools import pairwise
 from typing import TYPE_CHECKING, Any
 
-from torsionfe.output.sheet import PAPERS, Beside, Block, Cells, Facts, Lines, Picture, Sheet, clean, sheet_look
+from torsionfe.output.sheet import GUTTER, PAPERS, WIDTH, Beside, Block, Cells, Facts, Lines, Picture, Sheet, sheet_look
 from torsionfe.output.style import INK, QUIET
+from torsionfe.text import printable
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 __all__ = ["legible", "render_pdf"]
 
-_MARGIN, _HEAD, _FOOT = 40.0, 30.0, 24.0  # left and right; kept for the page's head and foot
+_HEAD, _FOOT = 30.0, 24.0  # kept for the page's head and foot
 _GAP = 6.0  # below a block
-_GUTTER = 16.0  # between columns
 _LEADING = 1.32
 #: Tried in turn until the sheet takes no more than three pages.
 _SIZES = (8.0, 7.5, 7.0, 6.6)
@@ -56,7 +56,7 @@ def legible(text: str) -> str:
     >>> legible("\N{GREEK SMALL LETTER TAU}\N{BLACK FOUR POINTED STAR}\N{PILE OF POO}")
     'τ✦[U+1F4A9]'
     """
-    return "".join(s if s == "\n" or ord(s) in _signs() else f"[U+{ord(s):04X}]" for s in clean(text))
+    return "".join(s if s == "\n" or ord(s) in _signs() else f"[U+{ord(s):04X}]" for s in printable(text))
 
 
 @lru_cache(maxsize=20_000)
@@ -119,6 +119,7 @@ class _Page:
 
         inches = PAPERS[paper]
         self.width, self.height = (72.0 * side for side in inches)
+        self.margin = 0.5 * (self.width - 72.0 * WIDTH)
         self.figure: Figure = Figure(figsize=inches, layout="constrained")
         self.figure.get_layout_engine().set(w_pad=0.02, h_pad=0.02)  # type: ignore[union-attr, call-arg]
 
@@ -313,14 +314,14 @@ def _picture_slab(block: Picture, width: float, size: float) -> _Slab:
 
 
 def _beside_slabs(block: Beside, width: float, size: float) -> list[_Slab]:
-    room = width - _GUTTER
+    room = width - 72.0 * GUTTER
     left_width = room * block.share
     left = [slab for item in block.left for slab in _slabs(item, left_width, size)]
     right = [slab for item in block.right for slab in _slabs(item, room - left_width, size)]
     height = max(sum(slab.height for slab in column) for column in (left, right)) - _GAP
 
     def draw(page: _Page, x: float, y: float) -> None:
-        for column, at in ((left, x), (right, x + left_width + _GUTTER)):
+        for column, at in ((left, x), (right, x + left_width + 72.0 * GUTTER)):
             down = y
             for slab in column:
                 slab.draw(page, at, down)
@@ -395,14 +396,14 @@ def _paged(slabs: Sequence[_Slab], most: float) -> Iterator[list[_Slab]]:
 
 def _furnish(page: _Page, sheet: Sheet, number: int, count: int) -> None:
     """Set the head and foot of a page."""
-    size, right = 6.6, page.width - _MARGIN
+    size, left, right = 6.6, page.margin, page.width - page.margin
     marks = _shortened("   ".join(sheet.marks), 0.45 * page.width, size)
-    room = right - _MARGIN - _width(marks, size) - 12.0
-    page.text(_MARGIN, 24.0, _shortened(sheet.title, room, size), size, ink=QUIET)
+    room = right - left - _width(marks, size) - 12.0
+    page.text(left, 24.0, _shortened(sheet.title, room, size), size, ink=QUIET)
     page.text(right, 24.0, marks, size, ink=QUIET, to="right")
-    page.line((_MARGIN, 29.0), (right, 29.0), 0.5, QUIET)
+    page.line((left, 29.0), (right, 29.0), 0.5, QUIET)
     low = page.height - 18.0
-    page.text(_MARGIN, low, _shortened(sheet.origin, 0.8 * (right - _MARGIN), size), size, ink=QUIET)
+    page.text(left, low, _shortened(sheet.origin, 0.8 * (right - left), size), size, ink=QUIET)
     page.text(right, low, f"page {number} of {count}", size, ink=QUIET, to="right")
 
 
@@ -420,21 +421,19 @@ def render_pdf(sheet: Sheet) -> bytes:
     """
     from matplotlib.backends.backend_pdf import PdfPages
 
-    width, height = (72.0 * side for side in PAPERS[sheet.paper])
-    most = height - _HEAD - _FOOT - 12.0
-    column = width - 2.0 * _MARGIN
+    most = 72.0 * PAPERS[sheet.paper][1] - _HEAD - _FOOT - 12.0
     for size in _SIZES:
-        pages = list(_paged(_sheet_slabs(sheet, column, most, size), most))
+        pages = list(_paged(_sheet_slabs(sheet, 72.0 * WIDTH, most, size), most))
         if len(pages) <= _WANTED_PAGES:
             break
     buffer = io.BytesIO()
-    about = {"Title": clean(sheet.title), "Creator": sheet.origin, "Producer": None, "CreationDate": None}
+    about = {"Title": printable(sheet.title), "Creator": sheet.origin, "Producer": None, "CreationDate": None}
     with sheet_look(), PdfPages(buffer, metadata=about) as book:
         for number, slabs in enumerate(pages, 1):
             page = _Page(sheet.paper)
             down = _HEAD + 6.0
             for slab in slabs:
-                slab.draw(page, _MARGIN, down)
+                slab.draw(page, page.margin, down)
                 down += slab.height
             _furnish(page, sheet, number, len(pages))
             book.savefig(page.figure)

@@ -7,18 +7,21 @@ adds to it, so that they cannot say different things.
 from __future__ import annotations
 
 import re
-import unicodedata
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
+
+from torsionfe.text import printable
 
 if TYPE_CHECKING:
     from markupsafe import Markup
     from matplotlib.figure import FigureBase
 
 __all__ = [
+    "GUTTER",
     "PAPERS",
+    "WIDTH",
     "Beside",
     "Block",
     "Cells",
@@ -27,14 +30,16 @@ __all__ = [
     "Picture",
     "Sheet",
     "SheetSection",
-    "clean",
+    "figure_bytes",
     "render_html",
     "sheet_look",
-    "svg_of",
+    "svg_pictures",
 ]
 
 #: Width and height in inches (ISO 216; ANSI/ASME Y14.1 size A).
 PAPERS = {"a4": (210.0 / 25.4, 297.0 / 25.4), "letter": (8.5, 11.0)}
+#: Of the column of text, and between two columns side by side (inches).
+WIDTH, GUTTER = 7.15, 0.22
 
 
 @dataclass(frozen=True, slots=True)
@@ -147,43 +152,20 @@ class Sheet:
     paper: str = "a4"
     origin: str = ""
 
-    def pictures(self) -> Iterator[Picture]:
-        """Yield every picture in order."""
+    def pictures(self) -> Iterator[tuple[Picture, float]]:
+        """Yield every picture in order, with its width in inches."""
 
-        def within(blocks: Sequence[Block]) -> Iterator[Picture]:
+        def within(blocks: Sequence[Block], width: float) -> Iterator[tuple[Picture, float]]:
             for block in blocks:
                 if isinstance(block, Picture):
-                    yield block
+                    yield block, width
                 elif isinstance(block, Beside):
-                    yield from within(block.left + block.right)
+                    room = width - GUTTER
+                    yield from within(block.left, block.share * room)
+                    yield from within(block.right, (1.0 - block.share) * room)
 
         for section in self.sections:
-            yield from within(section.blocks)
-
-
-# --- text from anywhere -------------------------------------------------------------------------------------
-
-#: Marks that turn the direction of the text after them, and the byte order mark: shown, never obeyed.
-_HIDDEN = {*range(0x202A, 0x202F), *range(0x2066, 0x206A), 0xFEFF, *range(0xE0000, 0xE0080)}
-
-
-def clean(text: str) -> str:
-    r"""Return text that only prints: line breaks stay, what would steer a printer or reader is written out.
-
-    Examples
-    --------
-    >>> clean("a\tb\u202ec")
-    'a b[U+202E]c'
-    """
-    lines = text.replace("\r\n", "\n").replace("\r", "\n").replace("\t", " ")
-    return "".join(f"[U+{ord(sign):04X}]" if _steers(sign) else sign for sign in lines)
-
-
-def _steers(sign: str) -> bool:
-    code = ord(sign)
-    if sign == "\n" or 0x20 <= code < 0x7F:
-        return False
-    return unicodedata.category(sign) in ("Cc", "Cs", "Zl", "Zp") or code in _HIDDEN or code & 0xFFFE == 0xFFFE
+            yield from within(section.blocks, WIDTH)
 
 
 # --- HTML ---------------------------------------------------------------------------------------------------
@@ -203,49 +185,65 @@ def sheet_look() -> Iterator[None]:
         yield
 
 
-def svg_of(picture: Picture, width: float) -> str:
-    """Return a picture as an SVG document, ``width`` in inches; the same bytes each time."""
+def figure_bytes(picture: Picture, width: float, ending: str) -> bytes:
+    """Return a picture as a file of its own, the same bytes each time.
+
+    Parameters
+    ----------
+    picture : Picture
+    width : float
+        In inches.
+    ending : {'svg', 'pdf', 'png'}
+        PNG has 300 dots an inch.
+    """
     import io
 
     from matplotlib.figure import Figure
 
+    about = {"svg": {"Date": None, "Creator": None}, "pdf": {"CreationDate": None, "Producer": None, "Creator": None}}
     with sheet_look():
         figure = Figure(figsize=(width, width * picture.ratio), layout="constrained")
         picture.draw(figure)
-        buffer = io.StringIO()
-        figure.savefig(buffer, format="svg", metadata={"Date": None, "Creator": None})
+        buffer = io.BytesIO()
+        figure.savefig(buffer, format=ending, dpi=300, metadata=about.get(ending, {"Software": None}))
     return buffer.getvalue()
 
 
-def _inline(picture: Picture, width: float) -> Markup:
-    """Return a picture as an ``svg`` element whose ids are its own among those of other pictures."""
+def _inline(name: str, caption: str, svg: str) -> Markup:
+    """Return an SVG document as an element whose ids are its own among those of other pictures."""
     from markupsafe import Markup, escape
 
-    svg = svg_of(picture, width)
     svg = re.sub(r"<!--.*?-->|<metadata>.*?</metadata>", "", svg[svg.index("<svg ") :], flags=re.DOTALL)
-    svg = re.sub(r'\b(id="|href="#|url\(#)', rf"\g<1>{picture.name}-", svg)
+    svg = re.sub(r'\b(id="|href="#|url\(#)', rf"\g<1>{name}-", svg)
     head, rest = svg.split(">", 1)
     head = re.sub(r' (?:width|height)="[^"]*"', "", head)  # as wide as its column
-    return Markup(f'{head} role="img" aria-label="{escape(clean(picture.caption))}">{rest}')
+    return Markup(f'{head} role="img" aria-label="{escape(printable(caption))}">{rest}')
 
 
 def _css_string(text: str) -> Markup:
     """Return text as a string of a style sheet, all but letters and digits escaped (CSS Syntax 3, 4.3.7)."""
     from markupsafe import Markup
 
-    return Markup('"' + "".join(s if s.isascii() and s.isalnum() else f"\\{ord(s):06x}" for s in clean(text)) + '"')
+    return Markup('"' + "".join(s if s.isascii() and s.isalnum() else f"\\{ord(s):06x}" for s in printable(text)) + '"')
 
 
 def _kind(block: Block) -> str:
     return type(block).__name__.lower()
 
 
-def render_html(sheet: Sheet) -> str:
+def svg_pictures(sheet: Sheet) -> dict[str, str]:
+    """Return every picture of a sheet as an SVG document, by its name."""
+    return {picture.name: figure_bytes(picture, width, "svg").decode() for picture, width in sheet.pictures()}
+
+
+def render_html(sheet: Sheet, svgs: Mapping[str, str] | None = None) -> str:
     """Return a sheet as one HTML document: no script, no other file, nothing from the network.
 
     Parameters
     ----------
     sheet : Sheet
+    svgs : mapping of str to str, optional
+        What `svg_pictures` returned, where it is there already.
 
     Returns
     -------
@@ -256,7 +254,7 @@ def render_html(sheet: Sheet) -> str:
     from markupsafe import Markup
 
     def shown(value: Any) -> Any:
-        return clean(value) if isinstance(value, str) and not isinstance(value, Markup) else value
+        return printable(value) if isinstance(value, str) and not isinstance(value, Markup) else value
 
     environment = Environment(
         loader=PackageLoader("torsionfe.output"),
@@ -267,5 +265,6 @@ def render_html(sheet: Sheet) -> str:
         lstrip_blocks=True,
     )
     environment.filters.update(kind=_kind, css_string=_css_string)
-    environment.globals["inline"] = _inline
+    drawn = svg_pictures(sheet) if svgs is None else svgs
+    environment.globals["inline"] = lambda picture: _inline(picture.name, picture.caption, drawn[picture.name])
     return environment.get_template("sheet.html").render(sheet=sheet).lstrip() + "\n"

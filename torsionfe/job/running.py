@@ -1,0 +1,120 @@
+"""A job, run: every section solved, the bar set against its allowables, the hand method beside it."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+from torsionfe.job.job import Job, Tolerance
+from torsionfe.member.bar import Bar, BarResponse, SteppedBar
+from torsionfe.member.margins import MarginTable, margins
+from torsionfe.member.plastic import PlasticTorque, plastic_torque
+from torsionfe.outline.outline import Outline
+from torsionfe.torsion.solution import TorsionSolution
+from torsionfe.torsion.solve import solve_torsion
+
+__all__ = ["JobResult", "Progress", "run_job"]
+
+#: Called with a line of text as each step begins.
+Progress = Callable[[str], object]
+
+
+@dataclass(frozen=True)
+class JobResult:
+    """What a job found. `torsionfe.job.content.sheet_of` makes the sheet of it.
+
+    Attributes
+    ----------
+    job : Job
+    solution : TorsionSolution
+        Of the job's own section.
+    bar : SteppedBar or None
+        Its segments hold the solutions of their own sections.
+    responses : tuple of BarResponse
+        One a case; none without a bar.
+    margins : MarginTable or None
+        Where there are a bar, cases and allowables.
+    plastic : PlasticTorque or None
+        Where a yield strength in shear is known.
+    """
+
+    job: Job
+    solution: TorsionSolution
+    bar: SteppedBar | None
+    responses: tuple[BarResponse, ...]
+    margins: MarginTable | None
+    plastic: PlasticTorque | None
+
+    @property
+    def solutions(self) -> tuple[TorsionSolution, ...]:
+        """The solution of every section, each once, the job's own first."""
+        found = [self.solution]
+        for part in self.bar.segments if self.bar else ():
+            if isinstance(part.solution, TorsionSolution) and not any(part.solution is known for known in found):
+                found.append(part.solution)
+        return tuple(found)
+
+
+def run_job(job: Job, progress: Progress | None = None) -> JobResult:
+    """Solve a job.
+
+    Parameters
+    ----------
+    job : Job
+        From `torsionfe.job.reading.read_job`.
+    progress : callable, optional
+        Called with a line of text as each step begins.
+
+    Returns
+    -------
+    JobResult
+
+    Raises
+    ------
+    TorsionError
+        A section cannot be meshed or solved.
+    """
+    say = progress or (lambda line: None)
+    known: list[TorsionSolution] = []
+    solution = _solved(job.section.outline, job.tolerance, known, say, "the section")
+    bar = _bar(job, known, say)
+    responses = tuple(bar.response(case) for case in job.cases) if bar is not None else ()
+    allowables = job.material.allowables
+    found = None
+    if bar is not None and job.cases and allowables is not None:
+        found = margins(bar, job.cases, allowables)
+    plastic = None
+    if allowables is not None and allowables.shear_yield is not None:
+        say("fully plastic torque")
+        plastic = plastic_torque(job.section.outline, allowables.shear_yield, solution)
+    return JobResult(job, solution, bar, responses, found, plastic)
+
+
+def _solved(
+    outline: Outline, tolerance: Tolerance, known: list[TorsionSolution], say: Progress, name: str
+) -> TorsionSolution:
+    """Return the solution of a section, solved once however often it occurs."""
+    for solution in known:
+        if solution.outline == outline:
+            return solution
+    say(f"solving {name}")
+    solution = solve_torsion(
+        outline,
+        tolerance.torsion_constant,
+        tolerance.order,
+        peak_tol=tolerance.peak_stress,
+        max_unknowns=tolerance.most_unknowns,
+    )
+    known.append(solution)
+    return solution
+
+
+def _bar(job: Job, known: list[TorsionSolution], say: Progress) -> SteppedBar | None:
+    if job.bar is None:
+        return None
+    parts = []
+    for part in job.bar.segments:
+        outline = (part.section or job.section).outline
+        solution = _solved(outline, job.tolerance, known, say, f"segment {part.name}")
+        parts.append(Bar(solution, part.length, part.shear_modulus, part.name))
+    return SteppedBar(parts, job.bar.held)
