@@ -1,0 +1,1 @@
+"""Studies: one section, sections beside the hand method, many sections."""
