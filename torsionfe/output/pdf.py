@@ -56,7 +56,8 @@ def legible(text: str) -> str:
     >>> legible("\N{GREEK SMALL LETTER TAU}\N{BLACK FOUR POINTED STAR}\N{PILE OF POO}")
     'τ✦[U+1F4A9]'
     """
-    return "".join(s if s == "\n" or ord(s) in _signs() else f"[U+{ord(s):04X}]" for s in printable(text))
+    known = "".join(s if s == "\n" or ord(s) in _signs() else f"[U+{ord(s):04X}]" for s in printable(text))
+    return known.replace("]\u200d[", "][")  # a joiner of two signs that are not there
 
 
 @lru_cache(maxsize=20_000)
@@ -122,23 +123,18 @@ class _Page:
         self.margin = 0.5 * (self.width - 72.0 * WIDTH)
         self.figure: Figure = Figure(figsize=inches, layout="constrained")
         self.figure.get_layout_engine().set(w_pad=0.02, h_pad=0.02)  # type: ignore[union-attr, call-arg]
+        self.late: list[Any] = []  # text and rules, which the layout of the pictures has nothing to do with
 
     def text(self, x: float, y: float, words: str, size: float, *, bold: bool = False, ink: str = INK,
              to: str = "left") -> None:
         """Set one line, its baseline at ``y``."""
-        self.figure.text(
-            x / self.width,
-            1.0 - y / self.height,
-            words,
-            fontsize=size,
-            fontweight="bold" if bold else "normal",
-            family=_FAMILY,
-            color=ink,
-            ha=to,
-            va="baseline",
-            parse_math=False,
-            in_layout=False,
-        )
+        from matplotlib.text import Text
+
+        place = x / self.width, 1.0 - y / self.height
+        weight = "bold" if bold else "normal"
+        line = Text(*place, words, fontsize=size, fontweight=weight, color=ink, ha=to, va="baseline", parse_math=False)
+        line.set(family=_FAMILY, transform=self.figure.transFigure)
+        self.late.append(line)
 
     def line(self, start: tuple[float, float], end: tuple[float, float], width: float, ink: str = INK) -> None:
         """Draw a straight line."""
@@ -146,8 +142,7 @@ class _Page:
 
         xs, ys = [p[0] / self.width for p in (start, end)], [1.0 - p[1] / self.height for p in (start, end)]
         rule = Line2D(xs, ys, linewidth=width, color=ink, transform=self.figure.transFigure, solid_capstyle="butt")
-        rule.set_in_layout(False)
-        self.figure.add_artist(rule)
+        self.late.append(rule)
 
     def picture(self, x: float, y: float, width: float, height: float, picture: Picture) -> None:
         """Draw a picture into a rectangle, its upper left corner at ``(x, y)``."""
@@ -158,6 +153,15 @@ class _Page:
             height_ratios=[max(y, 1e-6), height, max(self.height - y - height, 1e-6)],
         )
         picture.draw(self.figure.add_subfigure(grid[1, 1]))
+
+    def finished(self) -> Figure:
+        """Lay the pictures out, once, and add the text."""
+        if self.figure.subfigs:
+            self.figure.draw_without_rendering()
+        self.figure.set_layout_engine(None)  # else the page would be drawn twice
+        for artist in self.late:
+            self.figure.add_artist(artist)
+        return self.figure
 
 
 Draw = Callable[[_Page, float, float], None]
@@ -203,7 +207,8 @@ def _slabs(block: Block, width: float, size: float) -> list[_Slab]:
 
 
 def _fact_slabs(block: Facts, width: float, size: float) -> list[_Slab]:
-    at = min(0.38 * width, max((_width(legible(name), size) for name, _ in block.rows), default=0.0) + 10.0)
+    names = [line for name, _ in block.rows for line in legible(name).split("\n")]
+    at = min(0.38 * width, max((_width(line, size) for line in names), default=0.0) + 10.0)
     slabs = []
     for name, value in block.rows:
         columns = [(0.0, _wrapped(name, at - 8.0, size), QUIET), (at, _wrapped(value, width - at, size), INK)]
@@ -436,5 +441,5 @@ def render_pdf(sheet: Sheet) -> bytes:
                 slab.draw(page, page.margin, down)
                 down += slab.height
             _furnish(page, sheet, number, len(pages))
-            book.savefig(page.figure)
+            book.savefig(page.finished())
     return buffer.getvalue()

@@ -12,6 +12,7 @@ from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
+from torsionfe.output.figures import figure_data
 from torsionfe.text import printable
 
 if TYPE_CHECKING:
@@ -196,17 +197,12 @@ def figure_bytes(picture: Picture, width: float, ending: str) -> bytes:
     ending : {'svg', 'pdf', 'png'}
         PNG has 300 dots an inch.
     """
-    import io
-
     from matplotlib.figure import Figure
 
-    about = {"svg": {"Date": None, "Creator": None}, "pdf": {"CreationDate": None, "Producer": None, "Creator": None}}
     with sheet_look():
         figure = Figure(figsize=(width, width * picture.ratio), layout="constrained")
         picture.draw(figure)
-        buffer = io.BytesIO()
-        figure.savefig(buffer, format=ending, dpi=300, metadata=about.get(ending, {"Software": None}))
-    return buffer.getvalue()
+        return figure_data(figure, f".{ending}")
 
 
 def _inline(name: str, caption: str, svg: str) -> Markup:
