@@ -113,14 +113,14 @@ def test_a_digest_that_agrees_in_its_first_half_only_is_another_section(tmp_path
 
 
 def test_a_half_written_last_line_is_dropped_wherever_it_was_cut(tmp_path):
-    path = filled(tmp_path / "j")
+    path = filled(tmp_path / "j", 2)
     whole = path.read_bytes()
     ends = [k + 1 for k, byte in enumerate(whole) if byte == ord("\n")]
-    for cut in range(len(whole)):
+    for cut in {*range(0, len(whole), 4), *(near + end for end in ends[:-1] for near in (-1, 0, 1))}:
         path.write_bytes(whole[:cut])
         with Journal(path, SESSION) as book:
             kept = sum(end <= cut for end in ends)
-            assert [book.find(key(k)) is not None for k in range(3)] == [kept > k + 2 for k in range(3)], cut
+            assert [book.find(key(k)) is not None for k in range(2)] == [kept > 2, kept > 3], cut
             assert bool(book.notes) == (cut not in (0, *ends) and cut > ends[0]), cut
             book.append(key(9), 9, {"width": 1.0}, row(9))
         assert read_journal(path)["torsion_constant"][-1] == 1.0 / 3.0 + 9
@@ -150,15 +150,13 @@ def test_a_damaged_line_is_named_and_only_its_section_solved_again(tmp_path, sol
 
 
 def test_every_flipped_bit_is_seen(tmp_path):
-    path = filled(tmp_path / "j", 1)
-    whole = path.read_bytes()
-    start = whole.rfind(b"\n", 0, -1) + 1
-    for place in range(start, len(whole) - 1):
+    line = filled(tmp_path / "j", 1).read_bytes().splitlines(keepends=True)[-1]
+    assert journals._parsed(line) is not None
+    for place in range(len(line)):
         for bit in range(8):
-            flipped = bytearray(whole)
+            flipped = bytearray(line)
             flipped[place] ^= 1 << bit
-            path.write_bytes(flipped)
-            assert len(read_journal(path)) == 0
+            assert journals._parsed(bytes(flipped)) is None
 
 
 def test_a_damaged_session_line_is_not_trusted(tmp_path):
@@ -371,6 +369,6 @@ def test_reading_a_journal_gives_the_table(tmp_path):
 @pytest.mark.skipif(os.name == "nt", reason="needs SIGKILL")
 def test_killed_at_random_moments_it_loses_and_repeats_nothing(tmp_path):
     random.seed(20)
-    hits, rows = campaign(4, workers=0, longest=0.9, folder=tmp_path)
+    hits, rows = campaign(3, workers=0, folder=tmp_path)
     assert hits >= 2
     assert rows > 0

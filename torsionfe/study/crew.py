@@ -8,6 +8,7 @@ that dies costs its own task alone and is replaced; when the program dies, the p
 
 from __future__ import annotations
 
+import math
 import os
 import pickle
 import queue
@@ -19,6 +20,7 @@ import threading
 from collections.abc import Callable
 from concurrent.futures import Executor, Future
 from contextlib import suppress
+from pathlib import Path
 from typing import IO, Any, ParamSpec, TypeVar
 
 from torsionfe.errors import InputError, SolveError
@@ -31,6 +33,7 @@ _T = TypeVar("_T")
 _READY = b"ready"
 _LENGTH = struct.Struct("<Q")
 _STARTS = 3
+_SHARE = Path("/sys/fs/cgroup/cpu.max")  # of processor time (Linux control groups, version 2)
 
 
 class WorkerDiedError(SolveError):
@@ -42,10 +45,12 @@ class CrewError(SolveError):
 
 
 def cores() -> int:
-    """Return how many cores this process may use."""
-    if hasattr(os, "sched_getaffinity"):
-        return len(os.sched_getaffinity(0))
-    return os.cpu_count() or 1  # pragma: no cover (macOS, Windows)
+    """Return how many cores this process may use: those that it is held to, and a container's share of them."""
+    count = len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+    with suppress(OSError, ValueError):  # "max 100000" without a limit
+        share, period = map(int, _SHARE.read_text().split())
+        count = min(count, max(1, math.ceil(share / period)))
+    return count
 
 
 class Crew(Executor):
@@ -145,7 +150,8 @@ class Crew(Executor):
             self._part(worker)
 
     def _start(self) -> _Worker:
-        for _ in range(_STARTS):
+        how = "was stopped"
+        for _ in range(0 if self._stopped else _STARTS):
             worker = _Worker()
             with self._lock:
                 self._hands.append(worker)

@@ -399,6 +399,8 @@ def _read_row(record: Mapping[str, Any]) -> Row:
 def read_journal(path: str | os.PathLike[str]) -> SweepTable:
     """Return the rows of a journal as a table, in the order of their sections, without solving anything.
 
+    A section that a sweep was given several times may be there once.
+
     Parameters
     ----------
     path : str or path
