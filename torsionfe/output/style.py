@@ -9,7 +9,8 @@ with falling lightness: even to the eye, and in the same order when printed in g
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+import math
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
 from functools import cache
@@ -21,6 +22,7 @@ from numpy.typing import ArrayLike
 
 from torsionfe.checks import Floats
 from torsionfe.outline.outline import Outline
+from torsionfe.text import number
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -41,6 +43,7 @@ __all__ = [
     "axis_label",
     "cielab",
     "frame_section",
+    "frame_window",
     "label_axes",
     "look",
     "new_axes",
@@ -48,6 +51,7 @@ __all__ = [
     "stress_colours",
     "warping_colours",
     "with_unit",
+    "written_number",
     "written_unit",
 ]
 
@@ -92,7 +96,7 @@ class Mark:
     shape : str
         A matplotlib marker.
     face : str
-        Its colour; the edge is ink.
+        Its colour, ``none`` for a ring; the edge is ink, on a rim of paper.
     size : float
         In points.
     """
@@ -103,18 +107,22 @@ class Mark:
 
     def options(self) -> dict[str, Any]:
         """Return the keywords of ``Axes.plot`` that draw the marker without a line."""
+        from matplotlib.patheffects import Normal, Stroke
+
+        edge = 1.4 if self.face == "none" else 1.1
         return {
             "linestyle": "none",
             "marker": self.shape,
             "markersize": self.size,
             "markerfacecolor": self.face,
             "markeredgecolor": INK,
-            "markeredgewidth": 1.1,
+            "markeredgewidth": edge,
+            "path_effects": [Stroke(linewidth=edge + 1.6, foreground=PAPER), Normal()],
             "clip_on": False,
         }
 
 
-HOT_SPOT = Mark("o", "#ffffff", 7.0)
+HOT_SPOT = Mark("o", "none", 7.0)
 SINGULAR = Mark("X", "#ffffff", 9.0)
 TWIST_CENTRE = Mark("P", "#ffffff", 8.0)
 
@@ -198,6 +206,23 @@ def written_unit(unit: str) -> str:
     return head
 
 
+def written_number(value: float, digits: int = 4) -> str:
+    """Return a number as it is set in print, with a power of ten where it would be long.
+
+    Examples
+    --------
+    >>> written_number(34.1572), written_number(0.00043937), written_number(-2.5e9)
+    ('34.16', '4.394 × 10⁻⁴', '−2.5 × 10⁹')
+    """
+    if value == 0.0 or not np.isfinite(value):
+        return number(value, digits)
+    if not 1e-3 <= abs(value) < 1e6:
+        mantissa, power = f"{value:.{digits - 1}e}".split("e")
+        mantissa = mantissa.rstrip("0").rstrip(".") if "." in mantissa else mantissa
+        return f"{mantissa} × 10{str(int(power)).translate(_RAISED)}".replace("-", "−")
+    return number(value, digits).replace("-", "−")
+
+
 def with_unit(text: str, unit: str) -> str:
     """Return a number or a label with its unit after a space; without a unit, as it is."""
     return f"{plain(text)} {written_unit(unit)}" if unit else plain(text)
@@ -216,6 +241,8 @@ def axis_label(name: str, unit: str) -> str:
 
 # --- axes of a section ------------------------------------------------------------------------------------
 
+_LEAST = (0.5, 0.3)  # width and height of a section's frame, of the section's size
+
 
 def label_axes(ax: Axes, unit: str) -> None:
     """Label both axes of a section with its unit of length."""
@@ -233,15 +260,54 @@ def frame_section(ax: Axes, outline: Outline, unit: str = "", room: float = 0.06
     unit : str
         Of the outline's lengths.
     room : float
-        Margin on each side, as a share of the outline's size.
+        Margin on each side, as a share of the outline's size; a slender section gets more beside it.
     """
     x0, y0, x1, y1 = outline.bounds
-    margin = room * max(x1 - x0, y1 - y0)
-    ax.set_xlim(x0 - margin, x1 + margin)
-    ax.set_ylim(y0 - margin, y1 + margin)
+    size = max(x1 - x0, y1 - y0)
+    margin = room * size
+    wide = max(margin, 0.5 * (_LEAST[0] * size - (x1 - x0)))
+    high = max(margin, 0.5 * (_LEAST[1] * size - (y1 - y0)))
+    frame_window(ax, (x0 - wide, y0 - high, x1 + wide, y1 + high), unit)
+
+
+def frame_window(ax: Axes, window: tuple[float, float, float, float], unit: str = "") -> None:
+    """Show a part of the plane to scale, with labelled axes; a power of ten goes into their labels.
+
+    Parameters
+    ----------
+    ax : matplotlib.axes.Axes
+    window : tuple of float
+        ``(x_min, y_min, x_max, y_max)``.
+    unit : str
+        Of lengths.
+    """
+    from matplotlib.ticker import MaxNLocator
+
+    x0, y0, x1, y1 = window
+    size = max(x1 - x0, y1 - y0)
+    ax.set_xlim(x0, x1)
+    ax.set_ylim(y0, y1)
     ax.set_aspect("equal")
-    ax.locator_params(nbins=7)
-    label_axes(ax, unit)
+    for axis, name, low, high in ((ax.xaxis, "x", x0, x1), (ax.yaxis, "y", y0, y1)):
+        largest = max(abs(low), abs(high))
+        power = 0 if 1e-2 < largest < 1e5 else 3 * math.floor(math.log10(largest) / 3.0)
+        write, digits = _ticks(power, size)
+        count = max(2, round((7.5 - 0.5 * digits) * (high - low) / size))
+        axis.set_major_locator(MaxNLocator(count, steps=[1, 2, 5, 10]))
+        axis.set_major_formatter(write)
+        axis.set_label_text(axis_label(name, f"10^{power} {unit}".strip() if power else unit))
+
+
+def _ticks(power: int, size: float) -> tuple[Callable[[float, object], str], int]:
+    """Return what writes a tick over ``10**power``, and with how many digits after the point at most."""
+    digits = max(0, power - math.floor(math.log10(size / 8.0)))
+
+    def write(value: float, _: object = None) -> str:
+        text = f"{value / 10.0**power:.{digits}f}"
+        text = text.rstrip("0").rstrip(".") if "." in text else text
+        return "0" if text == "-0" else text.replace("-", "−")
+
+    return write, digits
 
 
 # --- colours ----------------------------------------------------------------------------------------------
