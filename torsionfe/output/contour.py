@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -217,7 +218,7 @@ _ARROW_EVERY = 0.45  # of the section's size
 
 
 def draw_flow(
-    ax: Axes, solution: TorsionSolution, samples: Samples, sense: float = 1.0, gap: float | None = None
+    ax: Axes, solution: TorsionSolution, samples: Samples, sense: float = 1.0, span: float | None = None
 ) -> tuple[ContourSet, PathCollection]:
     """Draw level lines of the stress function, with arrowheads along the shear stress of a torque.
 
@@ -228,18 +229,18 @@ def draw_flow(
     samples : Samples
     sense : float
         Sign of the torque.
-    gap : float, optional
-        About the least distance between lines (length).
+    span : float, optional
+        Width of what is shown (length), which the distance of lines and arrows goes by; the section by default.
     """
     phi = samples.stress_function
-    gap = _GAP * solution.outline.size if gap is None else gap
+    shown = solution.outline.size if span is None else span
     # |grad phi| = stress for G theta' = 1; the 90th percentile leaves out what a fillet adds
     steep = float(np.quantile(samples.magnitude, 0.9)) * solution.torsion_constant.value
     low, high = float(phi.min()), float(phi.max())
-    count = int(np.clip(round((high - low) / (steep * gap)), 4, 10))
+    count = int(np.clip(round((high - low) / (steep * _GAP * shown)), 4, 10))
     values = low + (high - low) * (np.arange(count) + 0.5) / count
     lines = ax.tricontour(samples.grid, phi, levels=list(values), colors=INK, linewidths=0.5, alpha=0.75, zorder=2.0)
-    return lines, _draw_arrows(ax, lines, samples, np.sign(sense), _ARROW_EVERY * solution.outline.size)
+    return lines, _draw_arrows(ax, lines, samples, np.sign(sense), _ARROW_EVERY * shown)
 
 
 def _draw_arrows(
@@ -281,21 +282,32 @@ def _spaced(line: Floats, every: float) -> Floats:
 # --- marks ------------------------------------------------------------------------------------------------
 
 
-def draw_mesh(ax: Axes, solution: TorsionSolution, width: float = 0.3) -> LineCollection:
+def draw_mesh(ax: Axes, solution: TorsionSolution) -> LineCollection:
     """Draw the sides between elements; those on the boundary are the outline itself."""
     from matplotlib.collections import LineCollection
 
     mesh = solution.mesh
     inner = np.ones(len(mesh.links), dtype=bool)
     inner[mesh.side_link] = False
+    width = 0.35 * min(1.0, math.sqrt(3000.0 / len(mesh.triangles)))  # a fine mesh stays grey
     sides = LineCollection(list(mesh.nodes[mesh.links[inner]]), colors=INK, linewidths=width, alpha=0.45, zorder=1.5)
     sides.set_rasterized(True)
     ax.add_collection(sides, autolim=False)
     return sides
 
 
-def draw_marks(ax: Axes, solution: TorsionSolution) -> tuple[Line2D | None, Line2D | None]:
-    """Mark the hot spots and the sharp re-entrant corners, each with its name for a legend."""
+def draw_marks(
+    ax: Axes, solution: TorsionSolution, window: tuple[float, float, float, float] | None = None
+) -> tuple[Line2D | None, Line2D | None]:
+    """Mark the hot spots and the sharp re-entrant corners, each with its name for a legend.
+
+    Parameters
+    ----------
+    ax : matplotlib.axes.Axes
+    solution : TorsionSolution
+    window : tuple of float, optional
+        ``(x_min, y_min, x_max, y_max)``: only those inside.
+    """
     spots, corners = solution.hot_spots, solution.singular_corners
     named = "largest stress elsewhere" if len(corners) else "hot spot"
     equal = f" ({len(spots)} equal)" if len(spots) > 1 else ""
@@ -303,6 +315,8 @@ def draw_marks(ax: Axes, solution: TorsionSolution) -> tuple[Line2D | None, Line
 
     def mark(points: ArrayLike, symbol: Mark, label: str) -> Line2D | None:
         where = np.reshape(np.asarray(points, dtype=float), (-1, 2))
+        if window is not None:
+            where = where[((where >= window[:2]) & (where <= window[2:])).all(axis=1)]
         if not len(where):
             return None
         return ax.plot(*where.T, **symbol.options(), label=label, zorder=5.0)[0]

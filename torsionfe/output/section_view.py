@@ -38,6 +38,7 @@ __all__ = [
     "place_label",
     "section_figure_size",
     "sideways",
+    "upright_bar",
 ]
 
 _WIDE = 1.45  # a section wider than this times its height has its colour bar below
@@ -191,20 +192,23 @@ def fill(
 
 def colour_bar(ax: Axes, contours: ContourSet, levels: Floats, scale: Scale, outline: Outline) -> Colorbar:
     """Draw a colour bar beside the section, or below a wide one; its last tick is the last level."""
-    below = sideways(outline)
-    bar = ax.figure.colorbar(
-        contours,
-        ax=ax,
-        location="bottom" if below else "right",
-        aspect=30,
-        fraction=0.08,
-        pad=0.03,
-        extendfrac=0.04,
-    )
-    bar.set_ticks(list(_thinned(levels, 7 if below else 12)), minor=False)
+    return _bar(ax, contours, levels, scale, "bottom" if sideways(outline) else "right")
+
+
+def upright_bar(ax: Axes, contours: ContourSet, levels: Floats, scale: Scale) -> Colorbar:
+    """Draw a colour bar to the right; its last tick is the last level."""
+    return _bar(ax, contours, levels, scale, "right")
+
+
+def _bar(ax: Axes, contours: ContourSet, levels: Floats, scale: Scale, side: str) -> Colorbar:
+    shape: Any = {"aspect": 30, "fraction": 0.08, "pad": 0.03, "extendfrac": 0.04}
+    bar = ax.figure.colorbar(contours, ax=ax, location=side, **shape)
+    bar.set_ticks(list(_thinned(levels, 7 if side == "bottom" else 12)), minor=False)
     bar.ax.minorticks_off()
-    (bar.ax.xaxis if below else bar.ax.yaxis).set_major_formatter(scale.write)
+    (bar.ax.xaxis if side == "bottom" else bar.ax.yaxis).set_major_formatter(scale.write)
     bar.set_label(scale.label)
+    if bar.solids is not None:
+        bar.solids.set_edgecolor("face")  # else vector viewers show seams
     return bar
 
 
@@ -217,7 +221,7 @@ def _thinned(levels: Floats, most: int) -> Floats:
     return np.append(kept, levels[-1])
 
 
-def legend_above(ax: Axes, entries: Sequence[Any]) -> Legend:
+def legend_above(ax: Axes, entries: Sequence[Any], columns: int = 1) -> Legend:
     """Explain what was drawn, above the axes; in a figure of their own, across its whole width.
 
     Parameters
@@ -225,12 +229,14 @@ def legend_above(ax: Axes, entries: Sequence[Any]) -> Legend:
     ax : matplotlib.axes.Axes
     entries : sequence of matplotlib artists
         Each with its label.
+    columns : int
     """
     from matplotlib.layout_engine import ConstrainedLayoutEngine
 
     parent = ax.figure
     engine = getattr(parent, "get_layout_engine", lambda: None)()
     shape: Any = {"handles": list(entries), "borderpad": 0.0, "handlelength": 1.6, "borderaxespad": 0.4}
+    shape["ncols"] = columns
     if isinstance(engine, ConstrainedLayoutEngine) and len(parent.axes) <= 2:
         return parent.legend(loc="outside upper left", **shape)
     return ax.legend(loc="lower left", bbox_to_anchor=(0.0, 1.0), **shape)
