@@ -168,6 +168,7 @@ def test_an_error_of_the_iterable_ends_the_run_with_the_rows_saved(tmp_path):
         ([], {"workers": True}, "workers must be"),
         ([], {"in_flight": 0}, "in_flight must be"),
         ([], {"rel_tol": 0.0}, "rel_tol"),
+        ([], {"on_change": "ignore"}, "on_change must be one of"),
         ([], {"order": 9}, "order"),
         ([], {"max_unknowns": 0}, "max_unknowns"),
     ],
@@ -477,6 +478,11 @@ def test_parameters_keep_their_type():
     table = sweep(points, lambda n, w, on, label, size: regular(n, w), workers=0, **LOOSE)
     kinds = [table[name].dtype.kind for name in ("n", "w", "on", "label", "size")]
     assert kinds == ["i", "f", "b", "O", "f"]
+
+
+def test_values_of_a_grid_may_come_from_an_iterator():
+    table = sweep({"width": (w for w in (2.0, 3.0)), "height": np.array([1.0, 1.5])}, rectangle, workers=0, **LOOSE)
+    assert table["height"].tolist() == [1.0, 1.5, 1.0, 1.5]
 
 
 def test_columns_are_read_only_and_unknown_ones_are_named(reference):

@@ -136,8 +136,8 @@ def _named(outlines: Mapping[Any, Any]) -> Sections:
 
 def _grid(grid: Mapping[Any, Any], build: Build) -> Sections:
     names = _names(grid)
-    total = math.prod(len(_values(name, given)) for name, given in grid.items())
-    return Sections(names, total, combinations(grid), build)
+    values = {name: _values(name, given) for name, given in grid.items()}  # once: an iterator gives them once
+    return Sections(names, math.prod(map(len, values.values())), combinations(values), build)
 
 
 def _names(parameters: Mapping[Any, Any]) -> tuple[str, ...]:

@@ -12,10 +12,11 @@ from contextlib import ExitStack, contextmanager
 from dataclasses import asdict, dataclass, field
 from typing import Any
 
+from torsionfe.checks import one_of
 from torsionfe.outline.outline import Outline
 from torsionfe.study.dispatch import Dispatch, Job
 from torsionfe.study.grid import Section, Sections, sections_of
-from torsionfe.study.journal import Journal, Session
+from torsionfe.study.journal import ON_CHANGE, Journal, Session
 from torsionfe.study.sweep_table import RowStore, SweepTable
 from torsionfe.study.work import OK, SHORT, Parcel, Row, Settings, failure
 
@@ -113,6 +114,7 @@ def sweep(
     >>> table["torsion_constant"].round().tolist()
     [286.0, 702.0]
     """
+    one_of("on_change", on_change, ON_CHANGE)
     settings = Settings(rel_tol, order, peak_tol, max_unknowns)
     given = sections_of(outlines, build)
     rows = RowStore(given.names)

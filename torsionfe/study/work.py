@@ -68,7 +68,9 @@ class Settings:
     max_unknowns: int
 
     def __post_init__(self) -> None:
-        _checked(_ANY, self.rel_tol, self.order, self.peak_tol, self.max_unknowns)
+        tolerance, peak = _checked(_ANY, self.rel_tol, self.order, self.peak_tol, self.max_unknowns)
+        for name, value in (("rel_tol", tolerance), ("order", int(self.order)), ("peak_tol", peak)):
+            object.__setattr__(self, name, value)
 
 
 @dataclass(frozen=True, slots=True)
