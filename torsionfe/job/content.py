@@ -5,16 +5,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
+from typing import Any
 
 from torsionfe import __version__
 from torsionfe.cautions import MARGINS, PLASTIC
 from torsionfe.job import findings
+from torsionfe.job.bar_section import bar_section
+from torsionfe.job.hand_section import hand_references, hand_section
 from torsionfe.job.job import Job
+from torsionfe.job.keys import KEYS
 from torsionfe.job.running import JobResult
 from torsionfe.job.table import Stated
 from torsionfe.job.words import between, measured, signed, sure, written_unit
-from torsionfe.output.sheet import Beside, Block, Cells, Facts, Lines, Picture, Sheet, SheetSection
+from torsionfe.output.sheet import GUTTER, WIDTH, Beside, Block, Cells, Facts, Lines, Picture, Sheet, SheetSection
 
 __all__ = ["sheet_of", "verdict"]
 
@@ -32,14 +36,14 @@ def sheet_of(result: JobResult) -> Sheet:
         The same for the same inputs and the same version; it holds no date but the job's own.
     """
     job = result.job
-    makers = {
+    makers: dict[str, Callable[[], SheetSection | None]] = {
         "section": lambda: _section(job),
         "inputs": lambda: _inputs(job),
         "method": lambda: _method(result),
         "constant": lambda: findings.constant(result),
         "stress": lambda: findings.stress(result),
-        "hand": lambda: findings.hand(result),
-        "bar": lambda: findings.bar(result),
+        "hand": lambda: hand_section(result),
+        "bar": lambda: bar_section(result),
         "sensitivity": lambda: findings.sensitivity(result),
     }
     chosen = [makers[name]() for name in job.sheet.sections if name in makers]
@@ -78,10 +82,14 @@ def verdict(result: JobResult) -> Iterator[str]:
     yield f"Torsion constant J = {between(solution.torsion_constant, system.power(4))}"
     spot = solution.hot_spot
     if spot is not None:
-        unit = f"1/{system.power(3)}"
-        beside = " beside sharp re-entrant corners" if len(solution.singular_corners) else ""
-        text = f"Peak shear stress per torque{beside} {sure(spot.stress_per_torque, spot.rel_error, unit)}"
-        yield f"{text}, W_t = {sure(1.0 / spot.stress_per_torque, spot.rel_error, system.power(3))}"
+        load = findings.section_torque(result)
+        named = f"per torque {sure(spot.stress_per_torque, spot.rel_error, f'1/{system.power(3)}')}"
+        if load and load[0]:
+            stress = sure(spot.stress_per_torque * load[0], spot.rel_error, system.stress)
+            named = f"{stress} in case {load[1]}, before factors"
+        beside = "Largest shear stress beside sharp corners" if len(solution.singular_corners) else "Peak shear stress"
+        yield f"{beside} {named}"
+        yield f"Section modulus W_t = {sure(1.0 / spot.stress_per_torque, spot.rel_error, system.power(3))}"
     if len(solution.singular_corners):
         yield f"{len(solution.singular_corners)} sharp re-entrant corners, where the elastic stress is unbounded"
     if result.margins is not None:
@@ -112,32 +120,40 @@ def _section(job: Job) -> SheetSection:
         *(("note", note) for note in job.section.notes),
     ]
     caption = f"The section to scale, axes in {unit}; the numbers are those of its vertices."
-    picture = Picture("section", caption, lambda figure: _draw_section(figure, job), findings.ratio(outline, 0.30))
-    return SheetSection("Section", (Beside((picture,), (Facts(tuple(rows)),), 0.5),))
+    shape = findings.ratio(outline, 0.46 * (WIDTH - GUTTER), around=0.32, beside=0.6, below=0.5)
+    picture = Picture("section", caption, lambda canvas: _draw_section(canvas, job), shape)
+    return SheetSection("Section", (Beside((picture,), (Facts(tuple(rows)),), 0.46),))
 
 
-def _draw_section(figure: object, job: Job) -> None:
+def _draw_section(canvas: Any, job: Job) -> None:
     from torsionfe.output.outline_plot import plot_outline
 
-    plot_outline(job.section.outline, figure.add_subplot(), unit=job.system.length)  # type: ignore[attr-defined]
+    plot_outline(job.section.outline, canvas.add_subplot(), unit=job.system.length)
 
 
+_LONG = 6  # rows: more inputs are set in two columns
 _UNITS = {"length": "length", "torque": "torque", "stress": "stress"}
 
 
 def _inputs(job: Job) -> SheetSection:
     """Return every number of the job file, as it stands there and as it was used."""
-    rows = [(_name(job, item), item.text, _used(job, item)) for item in job.stated]
-    blocks: list[Block] = []
+    order = list(KEYS[""])
+    used = [item for item in job.stated if item.path[0] != "sweep"]
+    used.sort(key=lambda item: order.index(str(item.path[0])))
+    rows = tuple((_name(job, item), item.text, _used(job, item)) for item in used)
     words = [
         ("material", job.material.name),
         ("source of its numbers", job.material.source),
         ("strengths", job.material.allowables.basis if job.material.allowables else ""),
         ("units", f"{job.system.length}, {job.system.force}; stress in {written_unit(job.system.stress)}"),
     ]
-    blocks.append(Facts(tuple((name, text) for name, text in words if text)))
-    if rows:
-        blocks.append(Cells(("input", "as stated", "as used"), tuple(rows), words=1))
+    head = ("input", "as stated", "as used")
+    blocks: list[Block] = [Facts(tuple((name, text) for name, text in words if text))]
+    if len(rows) > _LONG:
+        half = (len(rows) + 1) // 2
+        blocks.append(Beside((Cells(head, rows[:half]),), (Cells(head, rows[half:]),)))
+    elif rows:
+        blocks.append(Cells(head, rows))
     return SheetSection("Inputs", tuple(blocks))
 
 
@@ -199,23 +215,23 @@ def _cautions(result: JobResult) -> SheetSection:
 
 def _references(result: JobResult) -> SheetSection:
     lines = [
-        "Saint-Venant, A. B. de (1855): De la torsion des prismes. Mém. savants étrangers 14, 233-560.",
-        "Prandtl, L. (1903): Zur Torsion von prismatischen Stäben. Phys. Z. 4, 758-770.",
+        "Saint-Venant, A. B. de (1855): De la torsion des prismes. Mém. prés. par divers savants 14.",
+        "Prandtl, L. (1903): Zur Torsion von prismatischen Stäben. Phys. Z. 4.",
         "Prager, W.; Synge, J. L. (1947): Approximations in elasticity based on the concept of function space. "
-        "Q. Appl. Math. 5, 241-269.",
+        "Q. Appl. Math. 5.",
         "Timoshenko, S. P.; Goodier, J. N.: Theory of Elasticity, 3rd ed. 1970, chapter 10.",
-        *findings.hand_references(result),
+        *hand_references(result),
     ]
     allowables = result.job.material.allowables
     if allowables is not None and "von Mises" in allowables.basis:
         lines.append("Mises, R. von (1913): Mechanik der festen Körper im plastisch-deformablen Zustand. "
-                     "Göttinger Nachr., 582-592.")
+                     "Nachr. Ges. Wiss. Göttingen.")
     if allowables is not None and "Tresca" in allowables.basis:
         lines.append("Tresca, H. (1864): Sur l'écoulement des corps solides soumis à de fortes pressions. "
-                     "C. R. Acad. Sci. 59, 754-758.")
+                     "C. R. Acad. Sci. 59.")
     if result.plastic is not None:
         lines.append("Nadai, A. (1923): Der Beginn des Fließvorganges in einem tordierten Stab. Z. angew. Math. "
-                     "Mech. 3, 442-454.")
+                     "Mech. 3.")
     return SheetSection("References", (Lines(tuple(lines), "list"),))
 
 

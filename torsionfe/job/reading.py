@@ -7,6 +7,7 @@ import hashlib
 import os
 import re
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -195,6 +196,8 @@ def _cases(top: Table, segments: int) -> tuple[TorqueCase, ...]:
             station = row.whole("station", 0, 0, segments)
             assert isinstance(torque, dict)
             torque[station] = torque.get(station, 0.0) + row.needed("torque", "torque")
+            stated = top.source.stated
+            stated[-1] = replace(stated[-1], path=(*table.path, f"torque at station {station}"))
         if not stations:
             torque = table.needed("torque", "torque")
         with table.blame():

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
+from torsionfe.job.by_hand import HandAnswer, hand_answers
 from torsionfe.job.job import Job, Tolerance
 from torsionfe.member.bar import Bar, BarResponse, SteppedBar
 from torsionfe.member.margins import MarginTable, margins
@@ -36,6 +37,8 @@ class JobResult:
         Where there are a bar, cases and allowables.
     plastic : PlasticTorque or None
         Where a yield strength in shear is known.
+    hand : tuple of HandAnswer
+        The hand method, by each idealisation; the first one is drawn.
     """
 
     job: Job
@@ -44,6 +47,7 @@ class JobResult:
     responses: tuple[BarResponse, ...]
     margins: MarginTable | None
     plastic: PlasticTorque | None
+    hand: tuple[HandAnswer, ...]
 
     @property
     def solutions(self) -> tuple[TorsionSolution, ...]:
@@ -87,7 +91,8 @@ def run_job(job: Job, progress: Progress | None = None) -> JobResult:
     if allowables is not None and allowables.shear_yield is not None:
         say("fully plastic torque")
         plastic = plastic_torque(job.section.outline, allowables.shear_yield, solution)
-    return JobResult(job, solution, bar, responses, found, plastic)
+    say("hand method")
+    return JobResult(job, solution, bar, responses, found, plastic, hand_answers(job))
 
 
 def _solved(

@@ -8,7 +8,18 @@ from torsionfe.output.style import with_unit, written_unit
 from torsionfe.text import number
 from torsionfe.torsion.bounds import Bounds
 
-__all__ = ["between", "degrees", "measured", "place", "signed", "sure", "with_unit", "written_unit"]
+__all__ = [
+    "between",
+    "degrees",
+    "figure",
+    "measured",
+    "place",
+    "rounded_down",
+    "signed",
+    "sure",
+    "with_unit",
+    "written_unit",
+]
 
 
 def sure(value: float, rel_error: float, unit: str = "") -> str:
@@ -16,18 +27,54 @@ def sure(value: float, rel_error: float, unit: str = "") -> str:
 
     Examples
     --------
-    >>> sure(84.31266, 0.0015, "MPa"), sure(1234567.0, 0.02), sure(2.5, 0.0)
-    ('84.31 ± 0.13 MPa', '1235000 ± 25000', '2.5')
+    >>> sure(84.31266, 0.0015, "MPa"), sure(2.8072e-4, 0.001, "1/mm^3"), sure(2.5, 0.0)
+    ('84.31 ± 0.13 MPa', '(2.8072 ± 0.0029)×10⁻⁴ 1/mm³', '2.5')
     """
     error = abs(value * rel_error)
     if not math.isfinite(value) or not error > 1e-12 * abs(value) or not math.isfinite(error):
-        return with_unit(number(value, 6), unit)
+        return with_unit(figure(value, 6), unit)
+    power = _power(value)
+    error, value = error / 10.0**power, value / 10.0**power
     step = math.floor(math.log10(error)) - 1
-    if -4 <= math.floor(math.log10(abs(value))) < 9:
-        digits = max(0, -step)
-        return with_unit(f"{round(value, -step):.{digits}f} ± {_ceiling(error, step):.{digits}f}", unit)
-    figures = max(0, math.floor(math.log10(abs(value))) - step)
-    return with_unit(f"{value:.{figures}e} ± {error:.1e}", unit)
+    digits = max(0, -step)
+    text = f"{round(value, -step):.{digits}f} ± {_ceiling(error, step):.{digits}f}"
+    return with_unit(f"({text})×10{_raised(power)}" if power else text, unit)
+
+
+def _power(value: float) -> int:
+    """Return the power of ten that is taken out of a number: 0 where it is neither long nor small."""
+    size = math.floor(math.log10(abs(value))) if value else 0
+    return 0 if -3 <= size < 7 else size
+
+
+def _raised(power: int) -> str:
+    return written_unit(f"^{power}")
+
+
+def figure(value: float, digits: int = 4) -> str:
+    """Return a number, a power of ten taken out where it is long or small.
+
+    Examples
+    --------
+    >>> figure(0.00022434, 4), figure(12345.6, 6), figure(11445123.0)
+    ('2.243×10⁻⁴', '12345.6', '1.145×10⁷')
+    """
+    power = _power(value) if math.isfinite(value) else 0
+    return f"{value / 10.0**power:.{digits - 1}f}×10{_raised(power)}" if power else number(value, digits)
+
+
+def rounded_down(value: float, digits: int = 4) -> str:
+    """Return a limit with some digits, rounded down, so that it stays one.
+
+    Examples
+    --------
+    >>> rounded_down(390769.0), rounded_down(float("nan"))
+    ('390700', 'not defined')
+    """
+    if not math.isfinite(value) or value <= 0.0:
+        return number(value, digits)
+    step = 10.0 ** (math.floor(math.log10(value)) - digits + 1)
+    return figure(math.floor(value / step * (1.0 + 1e-12)) * step, digits)
 
 
 def _ceiling(error: float, step: int) -> float:
@@ -49,7 +96,7 @@ def between(bounds: Bounds, unit: str = "") -> str:
 
 def measured(value: float, unit: str = "", digits: int = 6) -> str:
     """Return an input or an exact number with its unit."""
-    return with_unit(number(value, digits), unit)
+    return with_unit(figure(value, digits), unit)
 
 
 def place(x: float, y: float, unit: str, size: float) -> str:

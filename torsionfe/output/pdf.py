@@ -24,6 +24,8 @@ __all__ = ["legible", "render_pdf"]
 
 _HEAD, _FOOT = 30.0, 24.0  # kept for the page's head and foot
 _GAP = 6.0  # below a block
+_NARROW_GAP, _WIDE_GAP = 8.0, 22.0  # between columns of a table
+_SHORT = 6  # rows: a shorter table stays on one page
 _LEADING = 1.32
 #: Tried in turn until the sheet takes no more than three pages.
 _SIZES = (8.0, 7.5, 7.0, 6.6)
@@ -156,8 +158,9 @@ class _Page:
 
     def finished(self) -> Figure:
         """Lay the pictures out, once, and add the text."""
-        if self.figure.subfigs:
-            self.figure.draw_without_rendering()
+        engine = self.figure.get_layout_engine()
+        if self.figure.subfigs and engine is not None:
+            engine.execute(self.figure)
         self.figure.set_layout_engine(None)  # else the page would be drawn twice
         for artist in self.late:
             self.figure.add_artist(artist)
@@ -203,12 +206,14 @@ def _slabs(block: Block, width: float, size: float) -> list[_Slab]:
         found = [_picture_slab(block, width, size)]
     else:
         found = _beside_slabs(block, width, size)
+    if isinstance(block, Facts | Cells) and len(found) <= _SHORT:
+        found = [*(replace(slab, joined=True) for slab in found[:-1]), *found[-1:]]
     return [*found, _Slab(_GAP, _nothing)] if found else []
 
 
 def _fact_slabs(block: Facts, width: float, size: float) -> list[_Slab]:
     names = [line for name, _ in block.rows for line in legible(name).split("\n")]
-    at = min(0.38 * width, max((_width(line, size) for line in names), default=0.0) + 10.0)
+    at = min(0.45 * width, max((_width(line, size) for line in names), default=0.0) + 10.0)
     slabs = []
     for name, value in block.rows:
         columns = [(0.0, _wrapped(name, at - 8.0, size), QUIET), (at, _wrapped(value, width - at, size), INK)]
@@ -233,35 +238,37 @@ def _row_slab(columns: Sequence[tuple[float, list[str], str]], width: float, siz
 
 
 def _cell_slabs(block: Cells, width: float, size: float) -> list[_Slab]:
-    widths = _column_widths([block.head, *block.rows], width, size)
-    gap = 8.0
+    size *= 0.95
+    widths, gap = _columns([block.head, *block.rows], width, size)
     starts = [sum(widths[:k]) + k * gap for k in range(len(widths))]
     sides = ["left" if k < block.words else "right" for k in range(len(widths))]
     places = [s if k < block.words else s + w for k, (s, w) in enumerate(zip(starts, widths, strict=True))]
+    whole = starts[-1] + widths[-1]
 
     def row(cells: Sequence[str], ink: str, rule: float) -> _Slab:
         lines = [_wrapped(cell, widths[k], size) for k, cell in enumerate(cells)]
-        return _row_slab([(places[k], lines[k], ink) for k in range(len(cells))], width, size, sides, rule=rule)
+        return _row_slab([(places[k], lines[k], ink) for k in range(len(cells))], whole, size, sides, rule=rule)
 
     head = replace(row(block.head, QUIET, 0.7), joined=True)
     return [head, *(replace(row(cells, INK, 0.4), head=head) for cells in block.rows)]
 
 
-def _column_widths(rows: Sequence[Sequence[str]], width: float, size: float) -> list[float]:
-    """Return the widths of a table's columns: as its cells need, the widest ones narrowed until all fit."""
+def _columns(rows: Sequence[Sequence[str]], width: float, size: float) -> tuple[list[float], float]:
+    """Return the widths of a table's columns, as its cells need, the widest narrowed until all fit; and their gap."""
     count = len(rows[0])
-    need = [max(max(_width(line, size) for line in legible(row[k]).split("\n")) for row in rows) + 0.5
-            for k in range(count)]
-    room = width - 8.0 * (count - 1)
-    if sum(need) <= room:
-        need[0] += room - sum(need)
-        return need
+    need = [
+        max(max(_width(line, size) for line in legible(row[k]).split("\n")) for row in rows) + 0.5 for k in range(count)
+    ]
+    gap = min(_WIDE_GAP, max(_NARROW_GAP, (width - sum(need)) / max(count - 1, 1)))
+    room = width - gap * (count - 1)
+    if sum(need) <= room + 1e-6:
+        return need, gap
     # a common limit on all columns, by halving
     low, high = room / count, max(need)
     for _ in range(40):
         middle = 0.5 * (low + high)
         low, high = (middle, high) if sum(min(n, middle) for n in need) <= room else (low, middle)
-    return [min(n, low) for n in need]
+    return [min(n, low) for n in need], gap
 
 
 def _line_slabs(block: Lines, width: float, size: float) -> list[_Slab]:

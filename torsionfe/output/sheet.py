@@ -182,7 +182,7 @@ def sheet_look() -> Iterator[None]:
     with matplotlib.style.context("default"), look():
         import matplotlib as mpl
 
-        mpl.rcParams.update({"svg.hashsalt": "torsionfe", "svg.fonttype": "path", "pdf.fonttype": 42})
+        mpl.rcParams.update({"svg.hashsalt": "torsionfe", "svg.fonttype": "path", "pdf.fonttype": 42, "font.size": 7.5})
         yield
 
 

@@ -1,0 +1,236 @@
+"""The command: results to standard output, messages to standard error, exit status, nothing half-written."""
+
+import os
+import re
+import subprocess
+import sys
+
+import pytest
+
+import torsionfe
+from torsionfe.cautions import MARGINS
+from torsionfe.cli import main
+from torsionfe.errors import SolveError
+
+QUICK = """
+title = "Plate \\u001b[31m"
+unit = "mm"
+outline = { shape = "rectangle", width = 40, height = 10 }
+[material]
+source = "test"
+shear_modulus = "27 GPa"
+shear_yield = "100 MPa"
+[[cases]]
+name = "push"
+torque = "50 N*m"
+[bar]
+length = 600
+[sweep.grid]
+width = [30, 40]
+height = [5, 10]
+[outputs]
+figures = []
+html = false
+pdf = false
+"""
+
+
+@pytest.fixture
+def job(tmp_path):
+    path = tmp_path / "plate.toml"
+    path.write_text(QUICK)
+    return path
+
+
+def run(capsys, *arguments):
+    status = main([str(argument) for argument in arguments])
+    out, err = capsys.readouterr()
+    return status, out, err
+
+
+def left_over(folder):
+    return [path.name for path in folder.rglob("*") if path.name.endswith(".part")]
+
+
+# --- help ---------------------------------------------------------------------------------------------------
+
+
+def test_help_shows_the_first_steps(capsys):
+    status, out, err = run(capsys, "--help")
+    assert (status, err) == (0, "")
+    for words in ("first steps", "solve sluice-lever", "starter lever.toml", "run lever.toml", "Exit status: 0 done"):
+        assert words in out
+    for command in ("solve", "run", "starter", "sweep", "sections"):
+        status, out, err = run(capsys, command, "--help")
+        assert (status, err) == (0, "")
+        assert "--quiet" in out
+    assert run(capsys, "--version") == (0, f"torsionfe {torsionfe.__version__}\n", "")
+
+
+@pytest.mark.parametrize("arguments", [(), ("sovle",), ("run",), ("run", "x.toml"), ("solve", "a", "--quiet", "--verbose")])
+def test_bad_usage_is_status_2(capsys, arguments):
+    status, out, err = run(capsys, *arguments)
+    assert (status, out) == (2, "")
+    assert err.startswith("usage: ")
+
+
+def test_the_module_is_the_same_program():
+    command = [sys.executable, "-m", "torsionfe", "sections"]
+    found = subprocess.run(command, capture_output=True, text=True, check=True)
+    assert "sluice-lever" in found.stdout
+    assert found.stderr == ""
+
+
+# --- solve --------------------------------------------------------------------------------------------------
+
+
+def test_solve_prints_a_table_with_cautions(capsys):
+    status, out, err = run(
+        capsys, "solve", "winch-shaft", "--torque", "450 N*m", "--length", "600 mm", "--shear-modulus", "79 GPa"
+    )
+    assert (status, err) == (0, "")
+    assert "torsion constant J" in out
+    assert "MPa" in out
+    assert all(line in out for line in MARGINS)
+
+
+@pytest.mark.parametrize(
+    ("arguments", "words"),
+    [
+        (("solve", "sluce-lever"), "neither a file nor a packaged section"),
+        (("solve", "sluice-lever", "--torque", "450 Nm/s"), "torque"),
+        (("solve", "sluice-lever", "--torque", "x"), "must be a number with a unit"),
+        (("solve", "sluice-lever", "--rel-tol", "x"), "--rel-tol must be a number"),
+        (("solve", "sluice-lever", "--length", "3"), "the twist needs torque, length and shear modulus"),
+        (("solve", "sluice-lever", "--figure", "a.gif"), ".png"),
+        (("run", "none.toml", "--out", "x"), "there is no file 'none.toml'"),
+        (("starter", "none/lever.toml"), "cannot be written"),
+    ],
+)
+def test_bad_input_is_status_2(capsys, tmp_path, monkeypatch, arguments, words):
+    monkeypatch.chdir(tmp_path)
+    status, out, err = run(capsys, *arguments)
+    assert (status, out) == (2, "")
+    assert err.startswith("torsionfe: ")
+    assert words in err
+    assert err.count("\n") == 1
+    assert not list(tmp_path.iterdir())
+
+
+def test_verbose_times_its_steps_and_quiet_says_nothing(capsys, tmp_path):
+    loud = run(capsys, "solve", "winch-shaft", "--verbose")
+    assert re.search(r"torsionfe: solving: \d+\.\d\d s\n", loud[2])
+    (tmp_path / "plate.csv").write_text("0,0\n40,0\n40,10\n0,10\n0,10.0\n")
+    noted = run(capsys, "solve", tmp_path / "plate.csv")
+    quiet = run(capsys, "solve", tmp_path / "plate.csv", "--quiet")
+    assert noted[:2] == quiet[:2]
+    assert noted[0] == 0
+    assert quiet[2] == ""
+
+
+# --- starter and run ----------------------------------------------------------------------------------------
+
+
+def test_starter_keeps_an_existing_file(capsys, tmp_path):
+    path = tmp_path / "lever.toml"
+    status, out, err = run(capsys, "starter", path)
+    assert (status, out) == (0, "")
+    assert f"torsionfe run {path} --out FOLDER" in err
+    path.write_text("mine")
+    status, out, err = run(capsys, "starter", path)
+    assert status == 2
+    assert "exists" in err
+    assert path.read_text() == "mine"
+    assert run(capsys, "starter", path, "--force", "--quiet") == (0, "", "")
+    assert "title = " in path.read_text()
+
+
+def test_run_prints_the_answer_and_writes_whole_files(capsys, job, tmp_path):
+    status, out, err = run(capsys, "run", job, "--out", tmp_path / "new" / "folder")
+    assert status == 0
+    assert "Torsion constant J = " in out
+    assert "Margins of safety" in out
+    assert all(line in out for line in MARGINS)
+    assert "\x1b" not in out + err
+    assert "files written to" in err
+    assert (tmp_path / "new" / "folder" / "result.json").is_file()
+    assert left_over(tmp_path) == []
+    assert run(capsys, "run", job, "--out", tmp_path / "new", "--quiet")[2] == ""
+
+
+def test_an_error_in_a_job_names_its_line(capsys, tmp_path):
+    (tmp_path / "plate.toml").write_text(QUICK.replace("widht", "width").replace("width = 40", "widht = 40"))
+    status, out, err = run(capsys, "run", tmp_path / "plate.toml", "--out", tmp_path / "out")
+    assert (status, out) == (2, "")
+    assert err.startswith("torsionfe: plate.toml, line 4: [outline] has no key 'widht': did you mean 'width'?")
+    assert not (tmp_path / "out").exists()
+
+
+def test_a_folder_that_cannot_be_made(capsys, job, tmp_path):
+    (tmp_path / "file").write_text("")
+    status, _, err = run(capsys, "run", job, "--out", tmp_path / "file")
+    assert status == 2
+    assert "cannot be made" in err
+
+
+def test_an_interrupt_leaves_nothing_half_written(capsys, job, tmp_path, monkeypatch):
+    out = tmp_path / "out"
+    out.mkdir()
+    (out / "result.json").write_text("older")
+
+    def interrupted(*_):
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr(os, "replace", interrupted)
+    status, _, err = run(capsys, "run", job, "--out", out)
+    assert (status, err.splitlines()[-1]) == (1, "torsionfe: interrupted")
+    assert [path.name for path in out.iterdir()] == ["result.json"]
+    assert (out / "result.json").read_text() == "older"
+
+
+def test_anything_else_is_status_1(capsys, job, tmp_path, monkeypatch):
+    from torsionfe.job import running
+
+    def fails(*_, **__):
+        raise SolveError("the equations have no solution")
+
+    monkeypatch.setattr(running, "solve_torsion", fails)
+    status, out, err = run(capsys, "run", job, "--out", tmp_path / "out")
+    assert (status, out) == (1, "")
+    assert err == "torsionfe: the equations have no solution\n"
+
+
+def test_a_closed_pipe_is_no_traceback(tmp_path):
+    command = f"{sys.executable} -m torsionfe solve winch-shaft | true; exit ${{PIPESTATUS[0]}}"
+    found = subprocess.run(["bash", "-c", command], capture_output=True, text=True, check=False)
+    assert "Traceback" not in found.stderr
+    assert found.returncode in (0, 1)
+
+
+# --- sweep --------------------------------------------------------------------------------------------------
+
+
+def test_sweep_writes_a_table_maps_and_a_journal(capsys, job, tmp_path):
+    job.write_text(QUICK.replace("figures = []", 'figures = ["svg"]'))
+    out = tmp_path / "out"
+    status, printed, err = run(capsys, "sweep", job, "--out", out, "--workers", "0")
+    assert status == 0
+    assert "Sweep: 4 sections" in printed
+    assert all(line in printed for line in MARGINS)
+    names = {path.name for path in out.iterdir()}
+    assert {"sweep.csv", "sweep.journal", "map_torsion_constant.svg", "map_hand_error.svg"} <= names
+    rows = (out / "sweep.csv").read_text().splitlines()
+    assert len(rows) == 5
+    again = run(capsys, "sweep", job, "--out", out, "--workers", "0", "--quiet")
+    assert again[0] == 0
+    assert (out / "sweep.csv").read_text().splitlines() == rows  # from the journal, times and all
+    assert left_over(tmp_path) == []
+    assert "journal" in err
+
+
+def test_a_job_without_a_sweep(capsys, tmp_path):
+    path = tmp_path / "plate.toml"
+    path.write_text(QUICK.split("[sweep.grid]", maxsplit=1)[0])
+    status, _, err = run(capsys, "sweep", path, "--out", tmp_path)
+    assert status == 2
+    assert "has no [sweep]" in err
