@@ -365,8 +365,9 @@ def _colours(name: str, stops: Sequence[tuple[float, float, float]]) -> ListedCo
     from matplotlib.colors import ListedColormap
 
     found = ListedColormap(_srgb(_even_steps(stops, 256)), name=name)
-    found.set_over(tuple(_srgb(np.array([_OVER]))[0]))
-    return found
+    coloured = found.with_extremes(over=tuple(_srgb(np.array([_OVER]))[0]))
+    assert isinstance(coloured, ListedColormap)
+    return coloured
 
 
 @cache
