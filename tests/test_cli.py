@@ -4,6 +4,7 @@ import os
 import re
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
 
@@ -117,14 +118,15 @@ def test_bad_input_is_status_2(capsys, tmp_path, monkeypatch, arguments, words):
     assert not list(tmp_path.iterdir())
 
 
-def test_verbose_times_its_steps_and_quiet_says_nothing(capsys, tmp_path):
+def test_verbose_times_its_steps_and_quiet_says_nothing(capsys):
     loud = run(capsys, "solve", "winch-shaft", "--verbose")
     assert re.search(r"torsionfe: solving: \d+\.\d\d s\n", loud[2])
-    (tmp_path / "plate.csv").write_text("0,0\n40,0\n40,10\n0,10\n0,10.0\n")
-    noted = run(capsys, "solve", tmp_path / "plate.csv")
-    quiet = run(capsys, "solve", tmp_path / "plate.csv", "--quiet")
+    drawing = Path(__file__).parents[1] / "examples" / "paddle_rail.dxf"
+    noted = run(capsys, "solve", drawing, "--layer", "SECTION")
+    quiet = run(capsys, "solve", drawing, "--layer", "SECTION", "--quiet")
     assert noted[:2] == quiet[:2]
     assert noted[0] == 0
+    assert "torsionfe: left out what is no boundary" in noted[2]
     assert quiet[2] == ""
 
 

@@ -75,7 +75,7 @@ def _responses(result: JobResult) -> Iterator[tuple[str, ...]]:
 
 def _margins(table: MarginTable, bar: SteppedBar, system: UnitSystem) -> list[Block]:
     torque = written_unit(system.torque)
-    head = ("case", "criterion", f"torque [{torque}]", "factor", "applied", "allowable", "margin", f"largest [{torque}]")
+    head = ("case", "criterion", f"torque [{torque}]", "factor", "applied", "allowable", "margin", "largest torque")
     rows = tuple(_margin(row, len(bar.segments) > 1, system) for row in table)
     reasons = dict.fromkeys(f"Margin {row.note}" for row in table if not row.defined)
     blocks: list[Block] = [Cells(head, rows, words=2)]
