@@ -68,7 +68,9 @@ def test_help_shows_the_first_steps(capsys):
     assert run(capsys, "--version") == (0, f"torsionfe {torsionfe.__version__}\n", "")
 
 
-@pytest.mark.parametrize("arguments", [(), ("sovle",), ("run",), ("run", "x.toml"), ("solve", "a", "--quiet", "--verbose")])
+@pytest.mark.parametrize(
+    "arguments", [(), ("sovle",), ("run",), ("run", "x.toml"), ("solve", "a", "--quiet", "--verbose")]
+)
 def test_bad_usage_is_status_2(capsys, arguments):
     status, out, err = run(capsys, *arguments)
     assert (status, out) == (2, "")

@@ -321,3 +321,73 @@ def test_html_in_a_browser(tmp_path):
         assert 0.005 < ink(tmp_path / "seen.png")[0] < 0.4
     if (tmp_path / "printed.pdf").exists() and PDFTOTEXT:
         assert "verdict" in pdf_text((tmp_path / "printed.pdf").read_bytes())
+
+
+# --- a job whose every word is hostile ----------------------------------------------------------------------
+
+JOB = """
+title = {0}
+unit = "mm"
+author = {1}
+checker = {2}
+revision = {3}
+date = {4}
+remarks = {5}
+[outline]
+file = {file}
+file_unit = "mm"
+[material]
+name = {6}
+source = {7}
+shear_modulus = "27 GPa"
+shear_yield = "100 MPa"
+[[cases]]
+name = {8}
+torque = 1000
+[[cases]]
+name = {9}
+torque = 2000
+[bar]
+[[bar.segments]]
+name = {10}
+length = 10
+[[bar.segments]]
+name = {11}
+length = 10
+[[compare.plates]]
+name = {4}
+width = 40
+thickness = 10
+[[compare.plates]]
+name = {12}
+width = 20
+thickness = 5
+[tolerance]
+torsion_constant = 0.05
+peak_stress = 0.05
+"""
+
+
+def toml(text):
+    return '"' + "".join(f"\\U{ord(s):08x}" for s in text if not 0xD800 <= ord(s) < 0xE000) + '"'
+
+
+def test_a_job_whose_every_word_is_hostile(tmp_path):
+    from torsionfe.job.content import sheet_of
+    from torsionfe.job.reading import read_job
+    from torsionfe.job.running import run_job
+    from torsionfe.job.writing import result_words
+
+    name = "<b>$x$ & 'y'.wkt"
+    (tmp_path / name).write_text("POLYGON ((0 0, 40 0, 40 10, 0 10, 0 0))")
+    texts = [text[:180] or "x" for text in HOSTILE]
+    (tmp_path / "job.toml").write_text(JOB.format(*map(toml, texts), file=toml(name)))
+    result = run_job(read_job(tmp_path / "job.toml"))
+    made = sheet_of(result)
+    found = Reading(render_html(made))
+    assert found.tags <= PLAIN_TAGS | SVG_TAGS
+    shown = "\n".join(found.texts)
+    for text in (*texts[:13], name):
+        assert printable(text) in shown
+    assert not re.search(r"[\x00-\x08\x0b-\x1f\x7f\u202a-\u202e]", result_words(result))
+    assert len(render_pdf(made)) > 10_000

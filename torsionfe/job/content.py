@@ -91,7 +91,8 @@ def verdict(result: JobResult) -> Iterator[str]:
         yield f"{beside} {named}"
         yield f"Section modulus W_t = {sure(1.0 / spot.stress_per_torque, spot.rel_error, system.power(3))}"
     if len(solution.singular_corners):
-        yield f"{len(solution.singular_corners)} sharp re-entrant corners, where the elastic stress is unbounded"
+        count = len(solution.singular_corners)
+        yield f"{count} sharp re-entrant corner{'s'[: count > 1]}, where the elastic stress is unbounded"
     if result.margins is not None:
         worst = result.margins.governing
         where = f", segment {worst.segment}" if worst.segment and len(result.bar.segments) > 1 else ""  # type: ignore[union-attr]

@@ -14,6 +14,7 @@ from torsionfe.job.running import JobResult
 from torsionfe.job.words import figure, sure, with_unit, written_unit
 from torsionfe.output.pdf import legible
 from torsionfe.output.sheet import GUTTER, WIDTH, Beside, Block, Cells, Lines, Picture, SheetSection
+from torsionfe.output.style import plain
 from torsionfe.text import number, percent
 
 __all__ = ["hand_references", "hand_section"]
@@ -83,7 +84,7 @@ def _draw_plates(canvas: Any, result: JobResult) -> None:
     from torsionfe.output.plate_plot import plot_plates
 
     first = result.hand[0].plates
-    named = tuple(replace(plate, name=legible(plate.name)) for plate in first.plates)
+    named = tuple(replace(plate, name=plain(legible(plate.name))) for plate in first.plates)
     plates = replace(first, plates=named)
     drawn = plot_plates(result.solution.outline, plates, canvas.add_subplot(), result.job.system.length)
     for text in drawn.labels:
