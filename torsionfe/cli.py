@@ -23,6 +23,7 @@ if TYPE_CHECKING:
 __all__ = ["main"]
 
 _DONE, _FAILED, _BAD_INPUT = 0, 1, 2
+_LINE = 76  # characters of the line that says what is being done
 
 _INTRO = """\
 Torsion of a bar of any cross-section: torsion constant with proven bounds, peak shear
@@ -145,15 +146,17 @@ def _add_solve(commands: argparse._SubParsersAction[argparse.ArgumentParser]) ->
 
 def _complain(line: object) -> None:
     """Print a line to standard error, with nothing in it that could steer a terminal."""
-    print(f"torsionfe: {printable(str(line))}", file=sys.stderr)
+    text = f"torsionfe: {printable(str(line))}"
+    print(text.ljust(_LINE) if sys.stderr.isatty() else text, file=sys.stderr)
 
 
 class _Messages:
-    """Lines to standard error, as many as were asked for."""
+    """Lines to standard error, as many as were asked for; on a terminal, the step that is being done."""
 
     def __init__(self, given: argparse.Namespace) -> None:
         self.quiet, self.verbose = given.quiet, given.verbose
         self.step, self.begun = "", time.perf_counter()
+        self.live = sys.stderr.isatty() and not (given.quiet or given.verbose)
 
     def say(self, line: str) -> None:
         """Say something unless all should be quiet."""
@@ -161,10 +164,13 @@ class _Messages:
             _complain(line)
 
     def begin(self, step: str) -> None:
-        """Note that a step begins, and how long the one before it took, where that was asked for."""
+        """Note that a step begins (none, ``''``, where all are done)."""
         now = time.perf_counter()
         if self.verbose and self.step:
             self.say(f"{self.step}: {now - self.begun:.2f} s")
+        if self.live:  # one line, overwritten
+            shown = f"torsionfe: {printable(step)[:60]} ..." if step else ""
+            print(f"\r{shown:<{_LINE}}\r", end="", file=sys.stderr, flush=True)
         self.step, self.begun = step, now
 
 
@@ -226,14 +232,14 @@ def _solve(given: argparse.Namespace) -> None:
     messages.begin("solving")
     tolerances = _number("--rel-tol", given.rel_tol), _number("--peak-tol", given.peak_tol)
     solution = solve_torsion(outline, tolerances[0], given.order, peak_tol=tolerances[1])
-    print(answer(solution, system, *numbers))
-    print(cautions())
+    messages.begin("")
+    print(f"{answer(solution, system, *numbers)}\n{cautions()}")
     messages.begin("drawing" if given.figure else "")
     if given.figure:
         from torsionfe.output.contour import plot_stress
         from torsionfe.output.figures import save_figure
 
-        drawn = plot_stress(solution, torque=numbers[0], unit=system.length, stress_unit=system.stress)
+        drawn = plot_stress(solution, torque=numbers[0] or None, unit=system.length, stress_unit=system.stress)
         save_figure(drawn.axes.figure, given.figure)
         messages.begin("")
         messages.say(f"figure written to {given.figure}")
@@ -270,6 +276,7 @@ def _run(given: argparse.Namespace) -> None:
     job = read_job(given.job)
     folder = check_folder(given.out)
     result = run_job(job, messages.begin)
+    messages.begin("")
     print(result_words(result))
     written = write_result(result, folder, messages.begin)
     messages.begin("")

@@ -123,9 +123,8 @@ class _Page:
         inches = PAPERS[paper]
         self.width, self.height = (72.0 * side for side in inches)
         self.margin = 0.5 * (self.width - 72.0 * WIDTH)
-        self.figure: Figure = Figure(figsize=inches, layout="constrained")
-        self.figure.get_layout_engine().set(w_pad=0.02, h_pad=0.02)  # type: ignore[union-attr, call-arg]
-        self.late: list[Any] = []  # text and rules, which the layout of the pictures has nothing to do with
+        self.figure: Figure = Figure(figsize=inches)
+        self.late: list[Any] = []  # text and rules
 
     def text(self, x: float, y: float, words: str, size: float, *, bold: bool = False, ink: str = INK,
              to: str = "left") -> None:
@@ -147,21 +146,27 @@ class _Page:
         self.late.append(rule)
 
     def picture(self, x: float, y: float, width: float, height: float, picture: Picture) -> None:
-        """Draw a picture into a rectangle, its upper left corner at ``(x, y)``."""
-        grid = self.figure.add_gridspec(
-            3,
-            3,
-            width_ratios=[max(x, 1e-6), width, max(self.width - x - width, 1e-6)],
-            height_ratios=[max(y, 1e-6), height, max(self.height - y - height, 1e-6)],
-        )
-        picture.draw(self.figure.add_subfigure(grid[1, 1]))
+        """Draw a picture into a rectangle, its upper left corner at ``(x, y)``.
+
+        It is laid out alone, and its axes then set on the page where they were there: one solver for all pictures
+        of a page sometimes finds no layout, and then takes the process down.
+        """
+        from matplotlib.figure import Figure
+
+        alone = Figure(figsize=(width / 72.0, height / 72.0), layout="constrained")
+        picture.draw(alone)
+        engine = alone.get_layout_engine()
+        if engine is not None and alone.axes:
+            engine.execute(alone)
+        part = self.figure.add_subfigure(self.figure.add_gridspec(1, 1)[0, 0])
+        part.bbox_relative.p0 = x / self.width, 1.0 - (y + height) / self.height
+        part.bbox_relative.p1 = (x + width) / self.width, 1.0 - y / self.height
+        picture.draw(part)
+        for here, there in zip(part.axes, alone.axes, strict=True):
+            here.set_position(there.get_position(original=True))
 
     def finished(self) -> Figure:
-        """Lay the pictures out, once, and add the text."""
-        engine = self.figure.get_layout_engine()
-        if self.figure.subfigs and engine is not None:
-            engine.execute(self.figure)
-        self.figure.set_layout_engine(None)  # else the page would be drawn twice
+        """Add the text, above the pictures."""
         for artist in self.late:
             self.figure.add_artist(artist)
         return self.figure
@@ -419,6 +424,17 @@ def _furnish(page: _Page, sheet: Sheet, number: int, count: int) -> None:
     page.text(right, low, f"page {number} of {count}", size, ink=QUIET, to="right")
 
 
+def _set(sheet: Sheet) -> list[list[_Slab]]:
+    """Return the slabs of each page, in the largest type that takes no more pages than wanted."""
+    most = 72.0 * PAPERS[sheet.paper][1] - _HEAD - _FOOT - 12.0
+    pages: list[list[_Slab]] = []
+    for size in _SIZES:
+        pages = list(_paged(_sheet_slabs(sheet, 72.0 * WIDTH, most, size), most))
+        if len(pages) <= _WANTED_PAGES:
+            break
+    return pages
+
+
 def render_pdf(sheet: Sheet) -> bytes:
     """Return a sheet as a PDF document with embedded fonts and vector figures.
 
@@ -433,11 +449,7 @@ def render_pdf(sheet: Sheet) -> bytes:
     """
     from matplotlib.backends.backend_pdf import PdfPages
 
-    most = 72.0 * PAPERS[sheet.paper][1] - _HEAD - _FOOT - 12.0
-    for size in _SIZES:
-        pages = list(_paged(_sheet_slabs(sheet, 72.0 * WIDTH, most, size), most))
-        if len(pages) <= _WANTED_PAGES:
-            break
+    pages = _set(sheet)
     buffer = io.BytesIO()
     about = {"Title": printable(sheet.title), "Creator": sheet.origin, "Producer": None, "CreationDate": None}
     with sheet_look(), PdfPages(buffer, metadata=about) as book:

@@ -41,6 +41,14 @@ __all__ = [
 PAPERS = {"a4": (210.0 / 25.4, 297.0 / 25.4), "letter": (8.5, 11.0)}
 #: Of the column of text, and between two columns side by side (inches).
 WIDTH, GUTTER = 7.15, 0.22
+#: Of every picture: small type; text of PDF to be searched; plain numbers on axes, which take half the time.
+_SETTINGS: Any = {
+    "font.size": 7.5,
+    "svg.hashsalt": "torsionfe",
+    "svg.fonttype": "path",
+    "pdf.fonttype": 42,
+    "axes.formatter.use_mathtext": False,
+}
 
 
 @dataclass(frozen=True, slots=True)
@@ -180,9 +188,7 @@ def sheet_look() -> Iterator[None]:
     from torsionfe.output.style import look
 
     with matplotlib.style.context("default"), look():
-        import matplotlib as mpl
-
-        mpl.rcParams.update({"svg.hashsalt": "torsionfe", "svg.fonttype": "path", "pdf.fonttype": 42, "font.size": 7.5})
+        matplotlib.rcParams.update(_SETTINGS)
         yield
 
 
