@@ -33,7 +33,7 @@ def xdmf_text(mesh: Mesh) -> bytes:
             where = ElementTree.SubElement(grid, "Attribute", Name=name, AttributeType=shape, Center=centre)
             _numbers(where, values)
     ElementTree.indent(root)
-    return ElementTree.tostring(root, encoding="utf-8", xml_declaration=True)
+    return bytes(ElementTree.tostring(root, encoding="utf-8", xml_declaration=True))
 
 
 def _numbers(parent: ElementTree.Element, values: NDArray[np.float64] | NDArray[np.int64]) -> None:

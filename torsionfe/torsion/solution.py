@@ -254,3 +254,8 @@ class TorsionSolution:
         from torsionfe.output.contour import plot_stress
 
         return plot_stress(self, ax=ax, **options)
+
+    def _repr_html_(self) -> str:
+        from torsionfe.output.notebook import rich_html
+
+        return rich_html("Torsion of the section", self._rows(), self.plot)
