@@ -1,17 +1,22 @@
 """The command: results to standard output, messages to standard error, exit status, nothing half-written."""
 
+import json
 import os
 import re
 import subprocess
 import sys
 from pathlib import Path
 
+import jsonschema
+import meshio
 import pytest
 
 import torsionfe
 from torsionfe.cautions import MARGINS
 from torsionfe.cli import main
 from torsionfe.errors import SolveError
+from torsionfe.job.reading import read_job
+from torsionfe.output.result_json import outline_of, result_schema
 
 QUICK = """
 title = "Plate \\u001b[31m"
@@ -160,6 +165,30 @@ def test_run_prints_the_answer_and_writes_whole_files(capsys, job, tmp_path):
     assert (tmp_path / "new" / "folder" / "result.json").is_file()
     assert left_over(tmp_path) == []
     assert run(capsys, "run", job, "--out", tmp_path / "new", "--quiet")[2] == ""
+
+
+def test_data_for_other_programs(capsys, job, tmp_path):
+    job.write_text(QUICK.replace("figures = []", "figures = []\ncsv = true\nfields = true"))
+    assert run(capsys, "run", job, "--out", tmp_path)[0] == 0
+    document = json.loads((tmp_path / "result.json").read_text())
+    jsonschema.validate(document, result_schema())
+    found = read_job(job)
+    assert outline_of(document) == found.section.outline
+    assert document["torque"] == 50e3
+    assert document["parts"]["job"]["digest"] == found.digest
+    assert document["parts"]["job"]["stated"]["cases.0.torque"] == {"text": "50 N*m", "value": 50e3}
+    assert document["parts"]["cautions"][:3] == list(MARGINS)
+    margin = document["parts"]["margins"][0]
+    assert margin["margin"] == margin["allowable"] / margin["applied"] - 1.0
+    # beta of a 4:1 rectangle is 0.281 (Timoshenko and Goodier, Theory of Elasticity, ch. 10)
+    hand = document["parts"]["hand_method"][0]["torsion_constant"]
+    assert hand == pytest.approx(0.281 * 40.0 * 10.0**3, rel=1e-3)
+    rows = (tmp_path / "margins.csv").read_text().splitlines()
+    assert rows[0].startswith("case,segment,criterion,torque")
+    assert rows[1].startswith("push,,shear yield,50000.0")
+    assert (tmp_path / "cases.csv").read_text().splitlines()[1].startswith("push,0,50000.0")
+    assert (tmp_path / "section.csv").read_text().splitlines()[1].startswith("torsion constant,")
+    assert meshio.read(tmp_path / "fields.vtu").point_data
 
 
 def test_an_error_in_a_job_names_its_line(capsys, tmp_path):

@@ -313,7 +313,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
         _complain(error)
         return _BAD_INPUT if getattr(error, "at", None) is not None else _FAILED
     except KeyboardInterrupt as stop:
-        _complain(stop or "interrupted")
+        _complain(str(stop) or "interrupted")
         return _FAILED
     except BrokenPipeError:
         sys.stderr.close()

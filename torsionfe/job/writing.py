@@ -8,7 +8,10 @@ from pathlib import Path
 from torsionfe.cautions import cautions
 from torsionfe.errors import InputError
 from torsionfe.job.content import sheet_of, verdict
+from torsionfe.job.data import csv_files, result_document
+from torsionfe.job.findings import section_torque
 from torsionfe.job.running import JobResult, Progress
+from torsionfe.output.fields import write_fields
 from torsionfe.output.pdf import render_pdf
 from torsionfe.output.sheet import figure_bytes, render_html, svg_pictures
 from torsionfe.storing import store
@@ -74,6 +77,10 @@ def write_result(result: JobResult, folder: Path, say: Progress | None = None) -
     if outputs.pdf:
         say("setting sheet.pdf")
         made[Path("sheet.pdf")] = render_pdf(sheet)
+    if outputs.json:
+        made[Path("result.json")] = result_document(result).encode("ascii")
+    if outputs.csv:
+        made |= {Path(name): text.encode("utf-8") for name, text in csv_files(result).items()}
     for ending in outputs.figures:
         say(f"drawing figures as {ending}")
         for picture, width in sheet.pictures():
@@ -83,4 +90,10 @@ def write_result(result: JobResult, folder: Path, say: Progress | None = None) -
     say("writing")
     if any(path.parent.name for path in made):
         check_folder(folder / "figures")
-    return [store(folder / path, data) for path, data in made.items()]
+    written = [store(folder / path, data) for path, data in made.items()]
+    if outputs.fields:
+        say("writing the fields")
+        load = section_torque(result)
+        torque = load[0] if load and load[0] else None
+        written.append(write_fields(result.solution, folder / "fields.vtu", torque))
+    return written

@@ -1,0 +1,101 @@
+"""What a job found, as data: the parts of ``result.json``, and tables for spreadsheets."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from torsionfe.cautions import MARGINS, PLASTIC
+from torsionfe.job.by_hand import HandAnswer
+from torsionfe.job.findings import section_torque
+from torsionfe.job.running import JobResult
+from torsionfe.member.bar import BarResponse, SteppedBar
+from torsionfe.output.result_json import json_text, to_json
+from torsionfe.output.tables import Table, csv_text
+
+__all__ = ["csv_files", "result_document"]
+
+
+def result_document(result: JobResult) -> str:
+    """Return ``result.json``: the job's own section after the schema, everything else in its ``parts``."""
+    job, load = result.job, section_torque(result)
+    parts: dict[str, Any] = {
+        "job": {
+            "heading": job.heading,
+            "units": {"length": job.system.length, "force": job.system.force, "stress": job.system.stress},
+            "section": job.section.source,
+            "stated": {".".join(map(str, item.path)): {"text": item.text, "value": item.value} for item in job.stated},
+            "files": job.files,
+            "digest": job.digest,
+        },
+        "cautions": [*MARGINS, *(PLASTIC if result.plastic is not None else ())],
+        "hand_method": [_hand(answer) for answer in result.hand],
+    }
+    if result.bar is not None:
+        parts["bar"] = _bar(result.bar)
+        parts["cases"] = [_case(response) for response in result.responses]
+    if result.margins is not None:
+        parts["margins"] = [{**_fields(row), "largest_torque": row.largest_torque} for row in result.margins]
+    if result.plastic is not None:
+        parts["plastic"] = {**_fields(result.plastic), "shape_factor": result.plastic.shape_factor}
+    torque = load[0] if load else None
+    return json_text(to_json(result.solution, unit=job.system.length, torque=torque, parts=parts))
+
+
+def _fields(item: Any) -> dict[str, Any]:
+    return {name: getattr(item, name) for name in item.__dataclass_fields__}
+
+
+def _hand(answer: HandAnswer) -> dict[str, Any]:
+    return {
+        "idealisation": answer.name,
+        "plates": list(answer.plates),
+        "torsion_constant": answer.torsion_constant,
+        "stress_per_torque": answer.stress_per_torque,
+        "governing": answer.governing,
+        "notes": answer.notes,
+    }
+
+
+def _bar(bar: SteppedBar) -> dict[str, Any]:
+    segments = [
+        {
+            "name": bar.label(k),
+            "length": part.length,
+            "shear_modulus": part.shear_modulus,
+            "torsion_constant": part.solution.torsion_constant,
+            "section_modulus": part.solution.section_modulus,
+            "sharp_re_entrant_corners": len(part.solution.singular_corners),
+        }
+        for k, part in enumerate(bar.segments)
+    ]
+    return {"segments": segments, "held": bar.held, "stiffness": bar.stiffness_bounds}
+
+
+def _case(response: BarResponse) -> dict[str, Any]:
+    return {
+        "name": response.case.name,
+        "limit_factor": response.case.limit_factor,
+        "ultimate_factor": response.case.ultimate_factor,
+        "torques": response.torques,
+        "twists": response.twists,
+        "twist_errors": response.twist_errors,
+        "reactions": response.reactions,
+        "peaks": response.peaks,
+    }
+
+
+def csv_files(result: JobResult) -> dict[str, str]:
+    """Return the tables for spreadsheets by the names of their files: the section, and each case and margin."""
+    found = {"section.csv": csv_text(result.solution, result.job.system.length)}
+    if result.responses:
+        columns = ("case", "segment", "torque", "twist at end", "twist error", "peak stress", "peak error", "x", "y")
+        rows = [
+            (response.case.name, response.bar.label(k), float(response.torques[k]), float(response.twists[k + 1]),
+             float(response.twist_errors[k + 1]), peak.stress, peak.rel_error, peak.x, peak.y)
+            for response in result.responses
+            for k, peak in enumerate(response.peaks)
+        ]  # fmt: skip
+        found["cases.csv"] = csv_text(Table(columns, tuple(rows)))
+    if result.margins is not None:
+        found["margins.csv"] = csv_text(result.margins)
+    return found
