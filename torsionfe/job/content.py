@@ -89,6 +89,7 @@ def verdict(result: JobResult) -> Iterator[str]:
             named = f"{stress} in case {load[1]}, before factors"
         beside = "Largest shear stress beside sharp corners" if len(solution.singular_corners) else "Peak shear stress"
         yield f"{beside} {named}"
+    if spot is not None and not len(solution.singular_corners):
         yield f"Section modulus W_t = {sure(1.0 / spot.stress_per_torque, spot.rel_error, system.power(3))}"
     if len(solution.singular_corners):
         count = len(solution.singular_corners)
@@ -96,8 +97,8 @@ def verdict(result: JobResult) -> Iterator[str]:
     if result.margins is not None:
         worst = result.margins.governing
         where = f", segment {worst.segment}" if worst.segment and len(result.bar.segments) > 1 else ""  # type: ignore[union-attr]
-        why = f" ({worst.note})" if not worst.defined else ""
-        yield f"Smallest margin of safety {signed(worst.margin)}{why}: case {worst.case}{where}, {worst.criterion}"
+        size = signed(worst.margin) if worst.defined else worst.note
+        yield f"Smallest margin of safety {size}; case {worst.case}{where}, {worst.criterion}"
     if any(not one.converged for one in result.solutions):
         yield "The tolerance was not met: see the warnings"
 

@@ -60,9 +60,9 @@ def constant(result: JobResult) -> SheetSection:
             number(step.upper, 6),
             percent(2.0 * (step.upper - step.lower) / (step.upper + step.lower)),
             figure(step.stress_per_torque, 5),
-            "" if k == 0 else percent(step.rel_error),
+            percent(step.rel_error) if step.rel_error < 1.0 else "",
         )
-        for k, step in enumerate(solution.passes)
+        for step in solution.passes
     )
     caption = "The bounds of J and the error of the peak stress as the mesh was refined."
     picture = Picture("convergence", caption, lambda canvas: _draw_convergence(canvas, result), 0.26)

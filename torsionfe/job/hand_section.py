@@ -7,6 +7,7 @@ from dataclasses import replace
 from typing import Any
 
 from torsionfe.closed_form.cells import CellSum
+from torsionfe.closed_form.derived import DerivedPlates
 from torsionfe.closed_form.rectangle import RULES
 from torsionfe.job.by_hand import HandAnswer
 from torsionfe.job.findings import ratio
@@ -19,6 +20,7 @@ from torsionfe.text import number, percent
 
 __all__ = ["hand_references", "hand_section"]
 
+_COVERED = 0.9  # of the area: below, the sheet warns
 _SHARE = 0.44  # of the width: the drawing
 
 
@@ -32,6 +34,11 @@ def hand_section(result: JobResult) -> SheetSection | None:
     blocks: list[Block] = [_idealisation(result), Cells(head, tuple(_methods(result)))]
     if len(result.solution.singular_corners):
         blocks.append(Lines(("* Beside sharp re-entrant corners, where the elastic stress is unbounded.",)))
+    drawn = result.hand[0].plates
+    if isinstance(drawn, DerivedPlates) and drawn.covered < _COVERED:
+        share = percent(drawn.covered, 3)
+        line = f"Plates and walls stand for only {share} of the section: the method hardly suits it."
+        blocks.append(Lines((line,), "warning"))
     notes = tuple(dict.fromkeys(note for answer in result.hand for note in answer.notes))
     if notes:
         blocks.append(Lines(notes, "list"))

@@ -101,7 +101,7 @@ _TABLES: dict[str, dict[str, str]] = {
         "criterion": "'von Mises' or 'Tresca'; needed with tensile strengths",
     },
     "cases": {
-        "name": "of the case",
+        "name": "of the case; its number without one",
         "torque": "at the far end",
         "at": "or torques at stations of a stepped bar",
         "limit_factor": "times the torque is set against yield and twist (1)",

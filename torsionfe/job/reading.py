@@ -186,7 +186,7 @@ def _allowables(table: Table | None, twist: float | None, rate: float | None, ba
 def _cases(top: Table, segments: int) -> tuple[TorqueCase, ...]:
     found = []
     for k, table in enumerate(top.tables("cases", list(KEYS["cases"]))):
-        name = table.text("name", f"case {k + 1}")
+        name = table.text("name", str(k + 1))
         stations = table.tables("at", list(KEYS["cases.at"]))
         if bool(stations) == ("torque" in table):
             raise table.error("", f"{table.name()} needs 'torque', or torques at stations, [[cases.at]]; one of them")

@@ -221,7 +221,7 @@ class Table:
             value = self.source.system.of(found)
         except InputError as error:
             raise self.source.error(place, str(error)) from error
-        self.source.stated.append(Stated(place, str(given), value, kind))
+        self.source.stated.append(Stated(place, _as_stated(given), value, kind))
         return value
 
     def number(self, key: str, default: float) -> float:
@@ -230,7 +230,7 @@ class Table:
             return default
         with self.blame_plain(key):
             value = finite(self.name(key), self.data[key])
-        self.source.stated.append(Stated((*self.path, key), str(self.data[key]), value, "number"))
+        self.source.stated.append(Stated((*self.path, key), _as_stated(self.data[key]), value, "number"))
         return value
 
     def share(self, key: str, default: float) -> float:
@@ -263,6 +263,10 @@ class Table:
         if len(given) > most:
             raise self.error(key, f"{self.name(key)} must have {most} entries at most, got {len(given)}")
         return [Table(self.source, (*self.path, key, k), item, keys) for k, item in enumerate(given)]
+
+
+def _as_stated(given: Any) -> str:
+    return f"{given:.15g}" if isinstance(given, float) else str(given)
 
 
 def _shown(value: Any) -> str:
