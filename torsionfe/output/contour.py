@@ -47,6 +47,7 @@ if TYPE_CHECKING:
 __all__ = ["StressPlot", "StressScale", "draw_flow", "draw_marks", "draw_mesh", "plot_stress", "stress_scale"]
 
 _QUANTILE = 0.98  # of the area: the end of the scale where no finite peak exists
+_BEYOND = ("off the scale: 2 % of the area", "above that, off the scale")  # without and with a hot spot
 
 
 @dataclass(frozen=True)
@@ -190,7 +191,8 @@ def plot_stress(
         scale = Scale.of(shown.name, shown.unit, values[-1])
         label = _label_hot_spot(ax, solution, scale.write_with_unit(shown.at_hot_spot(solution)))
         bar = colour_bar(ax, contours, values, scale, outline)
-        key = _draw_legend(ax, spots, corners, lines, bool(corners) and beyond) if legend else None
+        over = "" if not beyond else "off the scale" if values[-1] != top else _BEYOND[spots is not None]
+        key = _draw_legend(ax, (corners, spots), over, lines) if legend else None
     return StressPlot(
         ax, contours, edge, lines, arrows, triangles, spots, corners, label, key, bar, values
     )
@@ -333,16 +335,15 @@ def _label_hot_spot(ax: Axes, solution: TorsionSolution, text: str) -> Annotatio
 
 
 def _draw_legend(
-    ax: Axes, spots: Line2D | None, corners: Line2D | None, lines: ContourSet | None, clipped: bool
+    ax: Axes, marks: tuple[Line2D | None, ...], over: str, lines: ContourSet | None
 ) -> Legend:
-    """Explain markers, lines and the end of the scale, above the axes."""
+    """Explain markers, lines and what lies over the end of the scale, above the axes."""
     from matplotlib.lines import Line2D
     from matplotlib.patches import Patch
 
-    entries: list[Line2D | Patch] = [mark for mark in (corners, spots) if mark is not None]
-    if clipped:
-        what = "above that, off the scale" if spots is not None else "off the scale: 2 % of the area"
-        entries.append(Patch(facecolor=tuple(stress_colours().get_over()), edgecolor="none", label=what))
+    entries: list[Line2D | Patch] = [mark for mark in marks if mark is not None]
+    if over:
+        entries.append(Patch(facecolor=tuple(stress_colours().get_over()), edgecolor="none", label=over))
     if lines is not None:
         entries.append(Line2D([], [], color=INK, linewidth=0.6, marker=">", markersize=3.5, label="shear flow"))
     return legend_above(ax, entries)
