@@ -446,7 +446,7 @@ def test_convergence_shows_every_pass():
     assert drawn.lower.get_ydata() == pytest.approx([step.lower for step in solution.passes])
     assert drawn.upper.get_xdata() == pytest.approx([step.unknowns for step in solution.passes])
     assert drawn.peaks.lines[0].get_ydata() == pytest.approx([step.stress_per_torque for step in solution.passes])
-    assert drawn.axes[0].get_ylabel() == "torsion constant J [10³ mm⁴]"
+    assert drawn.axes[0].get_ylabel() == "torsion constant J\n[10³ mm⁴]"
     assert plot_convergence(solved("star")).peaks is None
     assert len(plot_convergence(solved("round")).lower.get_xdata()) == len(solved("round").passes)
 
@@ -457,6 +457,8 @@ def test_convergence_needs_a_pair_of_axes():
             plot_convergence(solved("angle"), given)
     pair = Figure().subplots(2)
     assert plot_convergence(solved("angle"), pair).axes == tuple(pair)
+    left, right = plot_convergence(solved("angle"), Figure().subplots(1, 2)).axes
+    assert left.get_xlabel() == right.get_xlabel() == "unknowns"  # side by side, each has its own
 
 
 def test_warping_is_drawn_between_its_extremes_about_the_centre_of_twist():

@@ -83,8 +83,11 @@ def plot_convergence(
             axes.tick_params(axis="x", which="minor", bottom=False, labelbottom=False)
             wide = (unknowns[-1] / unknowns[0]) ** 0.06 if len(unknowns) > 1 else 2.0
             axes.set_xlim(unknowns[0] / wide, unknowns[-1] * wide)
-        first.tick_params(axis="x", labelbottom=False)
-        second.set_xlabel("unknowns")
+        stacked = abs(first.get_position().x0 - second.get_position().x0) < 0.05
+        if stacked:
+            first.tick_params(axis="x", labelbottom=False)
+        for axes in (second,) if stacked else (first, second):
+            axes.set_xlabel("unknowns")
     return ConvergencePlot((first, second), bracket, low, high, peaks)
 
 
@@ -154,5 +157,5 @@ def _finish(ax: Axes, scale: Scale, title: str) -> None:
     step = float(np.diff(ax.get_yticks())[0]) / 10.0**scale.power
     digits = max(0, -math.floor(math.log10(step) + 1e-9))
     ax.yaxis.set_major_formatter(lambda value, _: f"{value / 10.0**scale.power:.{digits}f}")
-    ax.set_ylabel(scale.label)
+    ax.set_ylabel(scale.label.replace(" [", "\n["))
     ax.set_title(title, fontsize="small")
