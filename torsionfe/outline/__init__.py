@@ -1,0 +1,1 @@
+"""Outlines of straight edges and true arcs: made, checked, read and written."""
