@@ -206,3 +206,9 @@ def test_errors_keep_their_place_when_pickled():
         BRACKET.filleted(90.0)
     again = pickle.loads(pickle.dumps(caught.value))
     assert (str(again), again.at) == (str(caught.value), (8.0, 8.0))
+
+
+def test_a_radius_of_its_own_at_no_corner_is_refused():
+    plank = Outline([(0, 0), (20, 0), (40, 0), (40, 10), (0, 10)])
+    with pytest.raises(OutlineError, match=r"vertex 1 \(20, 0\) is no corner to round: its edges meet at 180.00"):
+        round_corners(plank, {(0, 1): (2.0, "root radius")})

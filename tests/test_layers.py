@@ -62,7 +62,8 @@ def test_imports_run_downward(path):
     assert own in FLOOR, f"{own} has no floor: give it one"
     if own in ("__init__", "__main__"):
         return
-    upward = {name for name in imports(ast.parse((ROOT / path).read_text())) if name != own and FLOOR[name] >= FLOOR[own]}
+    used = imports(ast.parse((ROOT / path).read_text())) - {own}
+    upward = {name for name in used if FLOOR[name] >= FLOOR[own]}
     assert not upward, f"{path} imports upward: {upward}"
 
 
@@ -87,3 +88,18 @@ def test_importing_the_package_is_light():
     code = f"import sys, torsionfe; print(sorted({heavy} & set(sys.modules)))"
     found = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert found.stdout.strip() == "[]"
+
+
+def test_every_public_name_is_there_and_known_to_type_checkers():
+    tree = ast.parse((ROOT / "__init__.py").read_text())
+    typed = {}
+    for node in ast.walk(tree):
+        if isinstance(node, ast.ImportFrom) and node.module.startswith("torsionfe."):
+            typed |= {alias.name: node.module.removeprefix("torsionfe.") for alias in node.names}
+    assert set(torsionfe.__all__) == set(typed)
+    assert typed.items() >= torsionfe._HOME.items()
+    for name in torsionfe.__all__:
+        assert getattr(torsionfe, name) is not None
+    assert set(torsionfe.__all__) <= set(dir(torsionfe))
+    with pytest.raises(AttributeError, match="no attribute 'torsoin'"):
+        torsionfe.torsoin  # noqa: B018

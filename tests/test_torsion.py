@@ -52,7 +52,8 @@ def test_quadratic_elements_converge_with_rate_four(name):
 
 
 def test_cubic_elements_converge_with_rate_six():
-    assert rate(case("ecctube_50_30_15").outline, case("ecctube_50_30_15").value("J"), 3, 4) == pytest.approx(6.0, abs=0.6)
+    tube = case("ecctube_50_30_15")
+    assert rate(tube.outline, tube.value("J"), 3, 4) == pytest.approx(6.0, abs=0.6)
 
 
 def test_cubic_elements_are_exact_where_the_stress_function_is_cubic():
@@ -63,7 +64,9 @@ def test_cubic_elements_are_exact_where_the_stress_function_is_cubic():
 
 
 @pytest.mark.parametrize("order", [1, 2, 3])
-@pytest.mark.parametrize("name", ["rect_2", "angle_80_8_r8", "sharp_L3", "tube_30_15", "twocell_fillet", "keyway_40_12_5_r1p5"])
+@pytest.mark.parametrize(
+    "name", ["rect_2", "angle_80_8_r8", "sharp_L3", "tube_30_15", "twocell_fillet", "keyway_40_12_5_r1p5"]
+)
 def test_gap_is_the_sum_over_elements(name, order):
     # Prager and Synge 1947: exactly, on any mesh, whatever the solver's own error
     fields = solve_fields(triangulate(case(name).outline.translated(0, 0)), order)
@@ -72,7 +75,20 @@ def test_gap_is_the_sum_over_elements(name, order):
 
 
 @pytest.mark.parametrize("order", [1, 2])
-@pytest.mark.parametrize("name", ["circle_r25", "equilateral_a60", "rect_1", "rect_5", "tube_30_15", "ecctube_50_30_5", "sharp_L3", "keyway_40_12_5_r1p5", "annsector_270_30_24"])
+@pytest.mark.parametrize(
+    "name",
+    [
+        "circle_r25",
+        "equilateral_a60",
+        "rect_1",
+        "rect_5",
+        "tube_30_15",
+        "ecctube_50_30_5",
+        "sharp_L3",
+        "keyway_40_12_5_r1p5",
+        "annsector_270_30_24",
+    ],
+)
 def test_bounds_enclose_and_tolerance_is_met(name, order):
     wanted = 1e-4 if order == 2 else 2e-2
     solution = tf.solve_torsion(case(name).outline, rel_tol=wanted, order=order, peak_tol=0.05)
@@ -323,3 +339,65 @@ def test_published_wide_flanges():
 def test_zero_area_solution_outline_is_never_made():
     with pytest.raises(tf.OutlineError):
         tf.solve_torsion(Outline([(0, 0), (1, 0), (2, 0)]))
+
+
+# --- the singular stress at sharp corners ------------------------------------------------------------------
+
+
+def sector(radius, degrees, parts=4):
+    """A circular sector, the apex (its sharp corner) at the origin."""
+    turn = np.radians(degrees) / parts
+    rim = [(radius * np.cos(k * turn), radius * np.sin(k * turn)) for k in range(parts + 1)]
+    return Outline([(0.0, 0.0), *rim], [0.0, *[np.tan(turn / 4.0)] * parts, 0.0])
+
+
+@pytest.mark.parametrize("degrees", [185, 225, 270, 315, 350])
+def test_corner_stress_of_a_sector(degrees):
+    # the series for a sector bar (Timoshenko and Goodier, art. 109): its first term's coefficient is
+    # 8 a^(2 - lambda) / (alpha lambda (4 - lambda^2)), lambda = pi / alpha
+    alpha, a = np.radians(degrees), 7.0
+    power = np.pi / alpha
+    exact = 8.0 * a ** (2.0 - power) / (alpha * (4.0 - power**2))
+    solution = tf.solve_torsion(sector(a, degrees), peak_tol=1.0)
+    (corner,) = solution.corner_stresses
+    assert (corner.x, corner.y) == (0.0, 0.0)
+    assert corner.exponent == pytest.approx(power)
+    off = corner.intensity * solution.torsion_constant.value / exact - 1.0
+    assert abs(off) <= corner.rel_error < 5e-3
+    assert corner.stress(1e-3, torque=-2.0) == pytest.approx(2.0 * corner.intensity * 1e-3 ** (power - 1.0))
+
+
+@pytest.mark.parametrize(
+    "outline",
+    [
+        shapes.angle(80, 80, 8),
+        shapes.tee(60, 50, 12, 8),
+        shapes.keyed_shaft(40, 12, 5),
+        shapes.box(60, 40, 6),
+        shapes.flatted_bar(40, 34).difference(shapes.round_bar(12).translated(20, 0)),
+    ],
+    ids=lambda outline: getattr(outline, "kind", "notched"),
+)
+def test_corner_stress_is_within_its_error_and_scales(outline):
+    coarse, fine = (tf.solve_torsion(outline, rel_tol=tol, peak_tol=1.0) for tol in (1e-2, 1e-5))
+    small = tf.solve_torsion(outline.scaled(1e-3), rel_tol=1e-2, peak_tol=1.0)
+    assert len(coarse.corner_stresses) == len(coarse.singular_corners)
+    for rough, sure, tiny in zip(coarse.corner_stresses, fine.corner_stresses, small.corner_stresses, strict=True):
+        assert abs(rough.intensity / sure.intensity - 1.0) <= rough.rel_error
+        assert sure.rel_error < 2e-3
+        scaled = sure.intensity * 1e-3 ** (-2.0 - sure.exponent)
+        assert tiny.intensity == pytest.approx(scaled, rel=tiny.rel_error)
+
+
+@pytest.mark.parametrize("degrees", [200, 270, 330])
+def test_a_small_fillet_reads_what_the_corner_foretold(degrees):
+    sharp = tf.solve_torsion(sector(1.0, degrees), peak_tol=1.0).corner_stresses[0]
+    rounded = tf.solve_torsion(sector(1.0, degrees).filleted(3e-3)).hot_spot
+    assert np.hypot(rounded.x, rounded.y) < 0.01
+    assert sharp.peak_with_fillet(3e-3) == pytest.approx(rounded.stress_per_torque, rel=0.01)
+
+
+def test_a_fillet_of_chords_is_told_of():
+    polygon = shapes.angle(80, 80, 8, root_radius=8).polygon(0.05)
+    printed = str(tf.solve_torsion(Outline.from_polygon(polygon), rel_tol=1e-2, peak_tol=0.1))
+    assert "turn by 30 degrees or less, as the chords of a fillet do: see restore_arcs" in printed

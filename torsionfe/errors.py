@@ -4,8 +4,8 @@ from __future__ import annotations
 
 __all__ = [
     "InputError",
-    "JournalError",
     "JobError",
+    "JournalError",
     "MeshError",
     "MissingExtraError",
     "OutlineError",

@@ -22,7 +22,8 @@ def number(value: float, digits: int = 4) -> str:
     """
     if not math.isfinite(value):
         return "not defined" if math.isnan(value) else ("unbounded" if value > 0 else "-unbounded")
-    return f"{value:.{digits}g}" if abs(value) < 10.0**digits or abs(value) >= 1e7 else f"{value:.0f}"
+    short = f"{value:.{digits}g}"
+    return f"{value:.0f}" if "e+" in short and abs(value) < 1e7 else short
 
 
 def percent(ratio: float, digits: int = 2) -> str:
@@ -30,10 +31,10 @@ def percent(ratio: float, digits: int = 2) -> str:
 
     Examples
     --------
-    >>> percent(0.01234), percent(-0.5), percent(0.0)
-    ('1.2 %', '-50 %', '0 %')
+    >>> percent(0.01234), percent(-0.5), percent(0.0), percent(1.234)
+    ('1.2 %', '-50 %', '0 %', '123 %')
     """
-    return f"{ratio * 100.0:.{digits}g} %" if math.isfinite(ratio) else number(ratio)
+    return f"{number(ratio * 100.0, digits)} %" if math.isfinite(ratio) else number(ratio)
 
 
 def printable(text: str) -> str:

@@ -9,6 +9,7 @@ preconditions the iteration (Bramble, Pasciak and Xu 1990, Math. Comput. 55, 1-2
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -137,7 +138,7 @@ def _to_older(born: Ints, ends: list[int]) -> csr_array:
     from scipy.sparse import eye_array, vstack
 
     total = eye_array(ends[0], format="csr")
-    for start, end in zip(ends[:-1], ends[1:], strict=True):
+    for start, end in itertools.pairwise(ends):
         pairs = born[start:end]
         rows = np.repeat(np.arange(end - start), 2)
         middle = csr((np.full(pairs.size, 0.5), (rows, pairs.ravel())), shape=(end - start, start))

@@ -73,7 +73,7 @@ def fillet(outline: Outline, radius: float, at: Iterable[int] | None = None) -> 
                 "by their vertex numbers, filleted(radius, at=[...])"
             )
     else:
-        rows = _vertices(outline, edges, at)
+        rows = _vertices(outline, at)
     return _rounded(outline, edges, dict.fromkeys(rows, (size, "fillet radius")))
 
 
@@ -90,7 +90,7 @@ def round_corners(outline: Outline, radii: Mapping[tuple[int, int], tuple[float,
     Raises
     ------
     OutlineError
-        A radius does not fit.
+        A radius does not fit, or a corner is none.
     """
     edges = outline.edges
     row_of = {
@@ -100,7 +100,7 @@ def round_corners(outline: Outline, radii: Mapping[tuple[int, int], tuple[float,
     return _rounded(outline, edges, {row_of[key]: given for key, given in radii.items() if given[0] > 0.0})
 
 
-def _vertices(outline: Outline, edges: Edges, at: Iterable[int]) -> list[int]:
+def _vertices(outline: Outline, at: Iterable[int]) -> list[int]:
     count = len(outline.vertices)
     try:
         given = [(item, None if isinstance(item, (bool, np.bool_)) else operator.index(item)) for item in at]
@@ -110,16 +110,23 @@ def _vertices(outline: Outline, edges: Edges, at: Iterable[int]) -> list[int]:
     for item, k in given:
         if k is None or not 0 <= k < count:
             raise OutlineError(f"there is no vertex {item!r}: the outer loop has 0 to {count - 1}")
-        angle = edges.interior_angle[k]
-        if abs(angle - np.pi) <= SMOOTH:
-            x, y = edges.start[k]
-            raise OutlineError(
-                f"vertex {k} ({x:g}, {y:g}) is no corner to round: its edges meet at "
-                f"{np.degrees(angle):.2f} degrees",
-                (float(x), float(y)),
-            )
         rows.append(k)
     return sorted(set(rows))
+
+
+def _refuse_smooth(edges: Edges, rows: Ints) -> None:
+    """Raise where the edges run straight on: no circle is tangent to both in one place only."""
+    smooth = np.abs(edges.interior_angle[rows] - np.pi) <= SMOOTH
+    if not smooth.any():
+        return
+    row = int(rows[np.argmax(smooth)])
+    x, y = edges.start[row]
+    void = f" of void {edges.loop[row] - 1}" if edges.loop[row] else ""
+    raise OutlineError(
+        f"vertex {edges.vertex[row]}{void} ({x:g}, {y:g}) is no corner to round: its edges meet at "
+        f"{np.degrees(edges.interior_angle[row]):.2f} degrees",
+        (float(x), float(y)),
+    )
 
 
 @dataclass(frozen=True)
@@ -235,6 +242,7 @@ def _rounded(outline: Outline, edges: Edges, given: Mapping[int, tuple[float, st
         return outline
     rows = np.array(sorted(given), dtype=np.int64)
     radius = np.array([given[int(row)][0] for row in rows])
+    _refuse_smooth(edges, rows)
     _refuse_misfits(edges, rows, radius, [given[int(row)][1] for row in rows])
     return _assemble(outline, edges, rows, _cut(edges, rows, radius))
 

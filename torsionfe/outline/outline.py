@@ -82,8 +82,9 @@ class Outline:
     def from_polygon(cls, polygon: Polygon) -> Outline:
         """Return the outline of a shapely polygon, its exterior and interiors, edges straight.
 
-        Points that repeat the one before are left out. Chains of chords stay as they are:
-        `torsionfe.outline.facets` restores arcs.
+        Points that repeat the one before are left out. Chains of chords stay as they are, and
+        each chord end that turns into the material is a sharp re-entrant corner to the solver:
+        `torsionfe.restore_arcs` makes them arcs again.
 
         Parameters
         ----------

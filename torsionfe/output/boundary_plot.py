@@ -9,10 +9,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from torsionfe.checks import Floats, Ints
+from torsionfe.outline.fillets import sharp_corners
 from torsionfe.output.contour import StressScale, stress_scale
 from torsionfe.output.section_view import Scale, legend_above
 from torsionfe.output.style import ACCENTS, HOT_SPOT, INK, QUIET, SINGULAR, look, new_axes
-from torsionfe.torsion.corners import sharp_corners
 from torsionfe.torsion.solution import TorsionSolution
 
 if TYPE_CHECKING:

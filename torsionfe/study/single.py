@@ -97,7 +97,8 @@ class Answer:
             ratio = thickest / stress / spot.stress_per_torque - 1.0
             factor = 1.0 if self.torque is None else abs(self.torque)
             unit = self._unit(self.system.stress) if self.torque is not None else ""
-            rows.append(("  its peak shear stress", f"{number(thickest / stress * factor)}{unit}, {percent(ratio)} off"))
+            peak = number(thickest / stress * factor)
+            rows.append(("  its peak shear stress", f"{peak}{unit}, {percent(ratio)} off"))
         return rows
 
 

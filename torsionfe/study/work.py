@@ -17,7 +17,7 @@ from torsionfe.errors import InputError
 from torsionfe.outline.outline import Outline
 from torsionfe.outline.shapes.trade import TradeShape
 from torsionfe.study.blas import one_thread
-from torsionfe.torsion.solve import _checked, solve_torsion
+from torsionfe.torsion.solve import checked_settings, solve_torsion
 
 __all__ = ["FAILED", "LOST", "NUMBERS", "OK", "SHORT", "WORDS", "Parcel", "Row", "Settings", "failure", "solve_parcel"]
 
@@ -68,7 +68,7 @@ class Settings:
     max_unknowns: int
 
     def __post_init__(self) -> None:
-        tolerance, peak = _checked(_ANY, self.rel_tol, self.order, self.peak_tol, self.max_unknowns)
+        tolerance, peak = checked_settings(_ANY, self.rel_tol, self.order, self.peak_tol, self.max_unknowns)
         for name, value in (("rel_tol", tolerance), ("order", int(self.order)), ("peak_tol", peak)):
             object.__setattr__(self, name, value)
 

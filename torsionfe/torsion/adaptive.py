@@ -7,8 +7,9 @@ import numpy as np
 from torsionfe.checks import Floats, Ints
 from torsionfe.mesh.bisect import bisect
 from torsionfe.mesh.trimesh import TriMesh
+from torsionfe.outline.fillets import sharp_corners
 from torsionfe.torsion.boundary import BoundaryStress
-from torsionfe.torsion.corners import exponents, sharp_corners
+from torsionfe.torsion.corners import exponents
 from torsionfe.torsion.fields import Fields
 
 __all__ = ["around_peaks", "refined"]

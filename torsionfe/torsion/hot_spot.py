@@ -8,8 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from torsionfe.checks import Floats, Ints
+from torsionfe.outline.fillets import sharp_corners
 from torsionfe.torsion.boundary import BoundaryStress
-from torsionfe.torsion.corners import sharp_corners
 
 __all__ = ["HotSpot", "Peak", "find_peaks", "plateau_share", "tied_peaks"]
 

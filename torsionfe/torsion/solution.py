@@ -13,11 +13,12 @@ from numpy.typing import ArrayLike
 from torsionfe.checks import Floats, finite, finite_array, positive
 from torsionfe.errors import InputError
 from torsionfe.mesh.trimesh import TriMesh
+from torsionfe.outline.fillets import sharp_corners
 from torsionfe.outline.outline import Outline
 from torsionfe.text import number, percent, table
 from torsionfe.torsion.boundary import BoundaryStress
 from torsionfe.torsion.bounds import Bounds
-from torsionfe.torsion.corners import sharp_corners
+from torsionfe.torsion.corners import CornerStress, corner_strengths, exponents
 from torsionfe.torsion.fields import Fields
 from torsionfe.torsion.frame import Frame
 from torsionfe.torsion.hot_spot import HotSpot, plateau_share, tied_peaks
@@ -30,6 +31,8 @@ if TYPE_CHECKING:
 
 __all__ = ["Pass", "TorsionSolution"]
 
+#: Re-entrant corners below this interior angle (radians) may be chord ends of a fillet that was an arc.
+_CHORDS = math.radians(210.0)
 #: What floating-point rounding may take from the bounds: they are widened by it (measured: below 1e-13).
 _ROUNDING = 1e-12
 
@@ -201,6 +204,20 @@ class TorsionSolution:
             raise InputError(f"points[{k}] = ({given[k, 0]:g}, {given[k, 1]:g}) lies outside the material")
         return stress_at_reference(self.fields, triangle, reference) * scale
 
+    @cached_property
+    def corner_stresses(self) -> tuple[CornerStress, ...]:
+        """The singular stress at each of the `singular_corners`, in their order: ranks designs with sharp corners."""
+        rows, strength, rel_error = corner_strengths(self.fields)
+        edges, bounds = self.outline.edges, Bounds(self.fields.lower, self.fields.upper)
+        angles, powers = edges.interior_angle[rows], exponents(edges, rows)
+        per_torque = strength / bounds.value * self.frame.scale ** (-2.0 - powers)
+        return tuple(
+            CornerStress(*(float(value) for value in values))
+            for values in zip(
+                *edges.start[rows].T, angles, powers, per_torque, rel_error + 0.5 * bounds.rel_gap, strict=True
+            )
+        )
+
     # --- words and pictures ---------------------------------------------------------------------------
 
     def __repr__(self) -> str:
@@ -232,13 +249,23 @@ class TorsionSolution:
             rows.append(("", f"{percent(share)} of the boundary is within 1 % of it"))
         if self.hot_spot:
             rows.append(("section modulus W_t", f"{number(self.section_modulus)}  [length^3]"))
-        for x, y in self.singular_corners[:6]:
-            rows.append(("sharp re-entrant corner", f"({number(x)}, {number(y)}): stress unbounded, fillet it"))
-        if len(self.singular_corners) > 6:
-            rows.append(("", f"and {len(self.singular_corners) - 6} more"))
+        rows.extend(self._corner_rows())
         rows.append(("mesh", f"{len(self.mesh.triangles)} triangles of order {self.order}, {len(self.passes)} passes"))
         if self.shortfall:
             rows.append(("NOT CONVERGED", self.shortfall))
+        return rows
+
+    def _corner_rows(self) -> list[tuple[str, str]]:
+        rows = []
+        for corner in self.corner_stresses[:6]:
+            term = f"{number(corner.intensity)} r^{corner.exponent - 1.0:.3f} per torque"
+            place = f"({number(corner.x)}, {number(corner.y)})"
+            rows.append(("sharp re-entrant corner", f"{place}: stress unbounded, as {term}; fillet it"))
+        if len(self.corner_stresses) > 6:
+            rows.append(("", f"and {len(self.corner_stresses) - 6} more"))
+        weak = sum(corner.angle < _CHORDS for corner in self.corner_stresses)
+        if weak >= 3:
+            rows.append(("", f"{weak} turn by 30 degrees or less, as the chords of a fillet do: see restore_arcs"))
         return rows
 
     @property

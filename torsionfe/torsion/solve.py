@@ -56,7 +56,7 @@ def solve_torsion(
     """
     from torsionfe.mesh.triangulate import triangulate
 
-    tolerance, peak_wanted = _checked(outline, rel_tol, order, peak_tol, max_unknowns)
+    tolerance, peak_wanted = checked_settings(outline, rel_tol, order, peak_tol, max_unknowns)
     frame = Frame.of(outline)
     mesh = frame.inward(triangulate(outline))
     trail: list[Pass] = []
@@ -87,9 +87,10 @@ def _shortfall(look: Look, tolerance: float, peak_wanted: float) -> str:
     return ", ".join(parts)
 
 
-def _checked(
+def checked_settings(
     outline: Outline, rel_tol: float, order: int, peak_tol: float, max_unknowns: int
 ) -> tuple[float, float]:
+    """Return both tolerances, every setting checked."""
     if not isinstance(outline, Outline):
         raise InputError(f"an Outline is needed, got {type(outline).__name__}: see torsionfe.Outline")
     tolerance = positive("rel_tol", rel_tol)
