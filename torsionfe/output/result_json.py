@@ -203,6 +203,7 @@ def _solution(solution: TorsionSolution, torque: float | None = None) -> dict[st
         "section_modulus": solution.section_modulus,
         "hot_spots": spots,
         "singular_corners": solution.singular_corners,
+        "corner_stresses": solution.corner_stresses,
         "warping_constant": solution.warping_constant,
         "warping_extremes": solution.warping_extremes,
         "centre_of_twist": solution.centre_of_twist,

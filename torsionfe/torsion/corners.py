@@ -41,7 +41,7 @@ _ROUNDED = np.array(
 #: Circles about the corner, as shares of the largest that meets nothing but the two flanks.
 _CIRCLES = np.array([0.35, 0.45, 0.55, 0.65, 0.75, 0.85])
 _GAUSS_X, _GAUSS_W = np.polynomial.legendre.leggauss(32)
-#: The true error was at most 2.5 times the disagreement, on sectors (exact) and trade shapes with sharp corners.
+#: The true error was at most 2.5 times the disagreement: on sectors (exact) and trade shapes with sharp corners.
 _CAUTION = 3.0
 #: A curved flank is straight enough on circles of this share of its radius.
 _CURVED = 0.15
@@ -74,7 +74,8 @@ class CornerStress:
 
     def stress(self, distance: float, torque: float = 1.0) -> float:
         """Return the singular term of the shear stress at a small distance (length) from the corner."""
-        return float(abs(finite("torque", torque)) * self.intensity * positive("distance", distance) ** (self.exponent - 1.0))
+        fall = positive("distance", distance) ** (self.exponent - 1.0)
+        return float(abs(finite("torque", torque)) * self.intensity * fall)
 
     def peak_with_fillet(self, radius: float, torque: float = 1.0) -> float:
         """Return about the peak shear stress that a fillet here would have.
