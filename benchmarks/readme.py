@@ -20,7 +20,7 @@ def main() -> int:
     before = readme.read_text()
     after = filled(before)
     if "--check" in sys.argv:
-        print("up to date" if before == after else "README.md differs from benchmarks/results: run benchmarks/readme.py")
+        print("up to date" if before == after else "README.md differs from the results: run benchmarks/readme.py")
         return int(before != after)
     readme.write_text(after)
     return 0

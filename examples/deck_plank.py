@@ -4,17 +4,14 @@ Sizes in mm, invented. The plank is the packaged section "deck-plank".
 """
 
 import torsionfe as tf
-from torsionfe.closed_form.cells import cell_sum
-from torsionfe.closed_form.derive import derive_plates
-from torsionfe.outline.samples import sample
 from torsionfe.text import number, percent, table
 
 
 def main() -> None:
     """Print torsion constants and stresses, by hand and by the solution."""
-    plank = sample("deck-plank")
+    plank = tf.sample("deck-plank")
     solution = tf.solve_torsion(plank)
-    hand = cell_sum(derive_plates(plank).cells)
+    hand = tf.cell_sum(tf.derive_plates(plank).cells)
     print(f"J = {solution.torsion_constant} mm^4")
     j, middle_of_web = solution.torsion_constant, [(81.0, 24.0)]
     in_web = abs(float(solution.stress_at(middle_of_web)[0, 1]))

@@ -6,21 +6,17 @@
 
 # %%
 import torsionfe as tf
-from torsionfe.member.bar import Bar, TorqueCase
-from torsionfe.member.margins import Allowables
-from torsionfe.member.plastic import plastic_torque
-from torsionfe.outline import shapes
 
 # %% [markdown]
 # ## The section
 # A stubby angle. Without its root fillet the stress in the corner would have no limit, and the result says so.
 
 # %%
-sharp = tf.solve_torsion(shapes.angle(62.0, 46.0, 13.0))
+sharp = tf.solve_torsion(tf.shapes.angle(62.0, 46.0, 13.0))
 print(sharp)
 
 # %%
-lever = shapes.angle(62.0, 46.0, 13.0, root_radius=7.0, toe_radius=4.0)
+lever = tf.shapes.angle(62.0, 46.0, 13.0, root_radius=7.0, toe_radius=4.0)
 lever.plot(unit="mm")
 
 # %% [markdown]
@@ -47,10 +43,10 @@ print(f"peak by hand / peak = {solution.section_modulus / hand.section_modulus:.
 # Each margin is taken at the unfavourable end of what is not known exactly.
 
 # %%
-bar = Bar(solution, length=250.0, shear_modulus=40e3, name="lever")
-bronze = Allowables.from_tension(190.0, 330.0, criterion="von Mises", twist=0.052)
+bar = tf.Bar(solution, length=250.0, shear_modulus=40e3, name="lever")
+bronze = tf.Allowables.from_tension(190.0, 330.0, criterion="von Mises", twist=0.052)
 print(bar)
-print(bar.margins([TorqueCase("lifting", 260e3), TorqueCase("jammed", 340e3, 1.1, 1.25)], bronze))
+print(bar.margins([tf.TorqueCase("lifting", 260e3), tf.TorqueCase("jammed", 340e3, 1.1, 1.25)], bronze))
 
 # %%
-print(plastic_torque(lever, shear_yield=bronze.shear_yield, solution=solution))
+print(tf.plastic_torque(lever, shear_yield=bronze.shear_yield, solution=solution))

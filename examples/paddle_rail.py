@@ -6,7 +6,6 @@ Sizes in mm, invented. paddle_rail_drawing.py writes the drawing.
 from pathlib import Path
 
 import torsionfe as tf
-from torsionfe.outline.files import read_outline_report
 from torsionfe.text import number, percent, table
 
 DRAWING = Path(__file__).with_name("paddle_rail.dxf")
@@ -14,9 +13,9 @@ DRAWING = Path(__file__).with_name("paddle_rail.dxf")
 
 def main() -> None:
     """Print what was found in the drawing, and the section's answer with and without its arcs."""
-    report = read_outline_report(DRAWING, layers="SECTION")
+    report = tf.read_outline_report(DRAWING, layers="SECTION")
     print(report)
-    chords = read_outline_report(DRAWING, layers="SECTION", restore_arcs=False).outline
+    chords = tf.read_outline_report(DRAWING, layers="SECTION", restore_arcs=False).outline
     rows = [["groove", "J between bounds", "W_t", "sharp corners"]]
     moduli = []
     for name, outline in (("arcs restored", report.outline), ("chords as drawn", chords)):

@@ -4,7 +4,6 @@ Sizes in mm, invented. The lever is the packaged section "sluice-lever".
 """
 
 import torsionfe as tf
-from torsionfe.outline import shapes
 from torsionfe.text import number, percent, table
 
 
@@ -12,7 +11,7 @@ def main() -> None:
     """Print the hand method beside the answer, over the fillet's radius."""
     rows = [["root radius", "J between bounds", "by hand", "J by hand is off", "peak stress by hand is off"]]
     for radius in (2.0, 4.0, 7.0, 10.0):
-        lever = shapes.angle(62.0, 46.0, 13.0, root_radius=radius, toe_radius=4.0)
+        lever = tf.shapes.angle(62.0, 46.0, 13.0, root_radius=radius, toe_radius=4.0)
         solution = tf.solve_torsion(lever)
         hand = tf.plate_sum(lever.plates())  # plates have no fillet: the same for every radius
         j, w = solution.torsion_constant, solution.section_modulus

@@ -46,6 +46,7 @@ if TYPE_CHECKING:
     from torsionfe.outline.facets import RestoredArcs, restore_arcs
     from torsionfe.outline.files.read import ReadResult, read_outline, read_outline_report
     from torsionfe.outline.files.write import write_outline
+    from torsionfe.outline.samples import sample
     from torsionfe.outline.shapes import TradeShape
     from torsionfe.output.boundary_plot import plot_boundary_stress
     from torsionfe.output.contour import plot_stress
@@ -87,6 +88,7 @@ _LATER = {
     "outline.facets": ("RestoredArcs", "restore_arcs"),
     "outline.files.read": ("ReadResult", "read_outline", "read_outline_report"),
     "outline.files.write": ("write_outline",),
+    "outline.samples": ("sample",),
     "outline.shapes": ("TradeShape",),
     "output.boundary_plot": ("plot_boundary_stress",),
     "output.contour": ("plot_stress",),
