@@ -10,6 +10,7 @@ __all__ = [
     "MissingExtraError",
     "OutlineError",
     "OutlineWarning",
+    "PlacedError",
     "ReadError",
     "SolveError",
     "TorsionError",
@@ -25,8 +26,8 @@ class InputError(TorsionError, ValueError):
     """An argument is out of its range, of the wrong shape, or not finite."""
 
 
-class OutlineError(InputError):
-    """An outline is not the boundary of a cross-section.
+class PlacedError(TorsionError):
+    """An error that knows where.
 
     Parameters
     ----------
@@ -43,6 +44,10 @@ class OutlineError(InputError):
     def __reduce__(self) -> tuple[object, ...]:
         """Keep the place when the error crosses a process boundary."""
         return type(self), (str(self), self.at)
+
+
+class OutlineError(PlacedError, InputError):
+    """An outline is not the boundary of a cross-section; ``at`` names the place where one can be named."""
 
 
 class OutlineWarning(UserWarning):
@@ -81,24 +86,8 @@ class UnitError(InputError):
     """A length unit is unknown, missing or contradicts another."""
 
 
-class MeshError(TorsionError, RuntimeError):
-    """An outline cannot be triangulated; ``at`` names the place.
-
-    Parameters
-    ----------
-    message : str
-        What is wrong, with the remedy.
-    at : tuple of float, optional
-        Where: coordinates in the outline's own unit.
-    """
-
-    def __init__(self, message: str, at: tuple[float, float] | None = None) -> None:
-        super().__init__(message)
-        self.at = at
-
-    def __reduce__(self) -> tuple[object, ...]:
-        """Keep the place when the error crosses a process boundary."""
-        return type(self), (str(self), self.at)
+class MeshError(PlacedError, RuntimeError):
+    """An outline cannot be triangulated; ``at`` names the place."""
 
 
 class SolveError(TorsionError, RuntimeError):
