@@ -49,18 +49,23 @@ if TYPE_CHECKING:
     from torsionfe.outline.samples import sample
     from torsionfe.outline.shapes import TradeShape
     from torsionfe.output.boundary_plot import plot_boundary_stress
+    from torsionfe.output.compare_plot import plot_comparison
     from torsionfe.output.contour import plot_stress
     from torsionfe.output.convergence import plot_convergence
     from torsionfe.output.fields import write_fields
     from torsionfe.output.figures import save_figure
     from torsionfe.output.outline_plot import plot_outline
     from torsionfe.output.plate_plot import plot_plates
+    from torsionfe.output.range_plot import plot_range
     from torsionfe.output.result_json import to_json, write_json
     from torsionfe.output.sweep_map import plot_map
     from torsionfe.output.tables import csv_text, markdown_text, write_csv, write_markdown
     from torsionfe.output.warping_plot import plot_warping, plot_warping_surface
     from torsionfe.output.zoom import plot_hot_spot
+    from torsionfe.study.compare import Comparison, compare
+    from torsionfe.study.hand import HandMethod
     from torsionfe.study.journal import read_journal
+    from torsionfe.study.range import HandRange, hand_method_range
     from torsionfe.study.size import SizeResult, bar_margin, size
     from torsionfe.study.sweep import SweepInterrupted, sweep
     from torsionfe.study.sweep_table import SweepTable
@@ -91,18 +96,23 @@ _LATER = {
     "outline.samples": ("sample",),
     "outline.shapes": ("TradeShape",),
     "output.boundary_plot": ("plot_boundary_stress",),
+    "output.compare_plot": ("plot_comparison",),
     "output.contour": ("plot_stress",),
     "output.convergence": ("plot_convergence",),
     "output.fields": ("write_fields",),
     "output.figures": ("save_figure",),
     "output.outline_plot": ("plot_outline",),
     "output.plate_plot": ("plot_plates",),
+    "output.range_plot": ("plot_range",),
     "output.result_json": ("to_json", "write_json"),
     "output.sweep_map": ("plot_map",),
     "output.tables": ("csv_text", "markdown_text", "write_csv", "write_markdown"),
     "output.warping_plot": ("plot_warping", "plot_warping_surface"),
     "output.zoom": ("plot_hot_spot",),
+    "study.compare": ("Comparison", "compare"),
+    "study.hand": ("HandMethod",),
     "study.journal": ("read_journal",),
+    "study.range": ("HandRange", "hand_method_range"),
     "study.size": ("SizeResult", "bar_margin", "size"),
     "study.sweep": ("SweepInterrupted", "sweep"),
     "study.sweep_table": ("SweepTable",),

@@ -6,7 +6,7 @@ import math
 import unicodedata
 from collections.abc import Iterable, Sequence
 
-__all__ = ["number", "percent", "printable", "table"]
+__all__ = ["number", "percent", "printable", "signed_percent", "table"]
 
 #: Marks that turn the direction of the text after them, and the byte order mark: shown, never obeyed.
 _HIDDEN = {*range(0x202A, 0x202F), *range(0x2066, 0x206A), 0xFEFF, *range(0xE0000, 0xE0080)}
@@ -35,6 +35,11 @@ def percent(ratio: float, digits: int = 2) -> str:
     ('1.2 %', '-50 %', '0 %', '123 %')
     """
     return f"{number(ratio * 100.0, digits)} %" if math.isfinite(ratio) else number(ratio)
+
+
+def signed_percent(ratio: float, digits: int = 2) -> str:
+    """Return a ratio as percent with its sign: ``'+3.1 %'``."""
+    return f"+{percent(ratio, digits)}" if ratio > 0.0 else percent(ratio, digits)
 
 
 def printable(text: str) -> str:

@@ -5,12 +5,12 @@ from __future__ import annotations
 from typing import Any
 
 from torsionfe.cautions import MARGINS, PLASTIC
-from torsionfe.job.by_hand import HandAnswer
 from torsionfe.job.findings import section_torque
 from torsionfe.job.running import JobResult
 from torsionfe.member.bar import BarResponse, SteppedBar
 from torsionfe.output.result_json import json_text, to_json
 from torsionfe.output.tables import Table, csv_text
+from torsionfe.study.compare import ComparedMethod
 
 __all__ = ["csv_files", "result_document"]
 
@@ -28,7 +28,7 @@ def result_document(result: JobResult) -> str:
             "digest": job.digest,
         },
         "cautions": [*MARGINS, *(PLASTIC if result.plastic is not None else ())],
-        "hand_method": [_hand(answer) for answer in result.hand],
+        "hand_method": [_hand(row) for row in result.hand.methods] if result.hand else [],
     }
     if result.bar is not None:
         parts["bar"] = _bar(result.bar)
@@ -45,14 +45,18 @@ def _fields(item: Any) -> dict[str, Any]:
     return {name: getattr(item, name) for name in item.__dataclass_fields__}
 
 
-def _hand(answer: HandAnswer) -> dict[str, Any]:
+def _hand(row: ComparedMethod) -> dict[str, Any]:
+    method = row.method
+    words = ("constant_error", "stiffness", "constant_reason", "stress_error", "strength", "stress_reason")
     return {
-        "idealisation": answer.name,
-        "plates": list(answer.plates),
-        "torsion_constant": answer.torsion_constant,
-        "stress_per_torque": answer.stress_per_torque,
-        "governing": answer.governing,
-        "notes": answer.notes,
+        "idealisation": method.name,
+        "plates": list(method.plates or ()),
+        "torsion_constant": method.torsion_constant,
+        "torsion_constant_stress": method.torsion_constant_stress,
+        "stress_per_torque": method.stress_per_torque,
+        "governing": method.governing,
+        **{name: getattr(row, name) for name in words},
+        "notes": method.notes,
     }
 
 
@@ -87,6 +91,8 @@ def _case(response: BarResponse) -> dict[str, Any]:
 def csv_files(result: JobResult) -> dict[str, str]:
     """Return the tables for spreadsheets by the names of their files: the section, and each case and margin."""
     found = {"section.csv": csv_text(result.solution, result.job.system.length)}
+    if result.hand is not None:
+        found["hand_method.csv"] = csv_text(result.hand)
     if result.responses:
         columns = ("case", "segment", "torque", "twist at end", "twist error", "peak stress", "peak error", "x", "y")
         rows = [

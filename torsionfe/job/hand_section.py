@@ -2,20 +2,22 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from dataclasses import replace
 from typing import Any
 
 from torsionfe.closed_form.cells import CellSum
 from torsionfe.closed_form.derived import DerivedPlates
+from torsionfe.closed_form.plates import PlateSet
 from torsionfe.closed_form.rectangle import RULES
-from torsionfe.job.by_hand import HandAnswer
 from torsionfe.job.findings import ratio
 from torsionfe.job.running import JobResult
 from torsionfe.job.words import figure, sure, with_unit, written_unit
 from torsionfe.output.pdf import legible
 from torsionfe.output.sheet import GUTTER, WIDTH, Beside, Block, Cells, Lines, Picture, SheetSection
 from torsionfe.output.style import plain
+from torsionfe.study.compare import Comparison
 from torsionfe.text import number, percent
 
 __all__ = ["hand_references", "hand_section"]
@@ -26,52 +28,66 @@ _SHARE = 0.44  # of the width: the drawing
 
 def hand_section(result: JobResult) -> SheetSection | None:
     """Return the hand method beside the answer; None where the job has none."""
-    if not result.hand:
+    found = result.hand
+    if found is None:
         return None
     system = result.job.system
     length = written_unit(system.power(4)), written_unit(f"1/{system.power(3)}")
-    head = ("method", f"J [{length[0]}]", "off", "stiffness", f"peak / torque [{length[1]}]", "off", "strength")
-    blocks: list[Block] = [_idealisation(result), Cells(head, tuple(_methods(result)))]
-    if len(result.solution.singular_corners):
-        blocks.append(Lines(("* Beside sharp re-entrant corners, where the elastic stress is unbounded.",)))
-    drawn = result.hand[0].plates
+    head = ("method", f"J [{length[0]}]", "off", "for stiffness", f"peak / torque [{length[1]}]", "off", "for strength")
+    blocks: list[Block] = [_idealisation(result, found), Cells(head, tuple(_methods(found))), _errors(result, found)]
+    drawn = found.methods[0].method.plates
     if isinstance(drawn, DerivedPlates) and drawn.covered < _COVERED:
         share = percent(drawn.covered, 3)
         line = f"Plates and walls stand for only {share} of the section: the method hardly suits it."
         blocks.append(Lines((line,), "warning"))
-    notes = tuple(dict.fromkeys(note for answer in result.hand for note in answer.notes))
+    notes = tuple(dict.fromkeys(note for row in found.methods for note in row.method.notes))
     if notes:
         blocks.append(Lines(notes, "list"))
     return SheetSection("Hand method", tuple(blocks))
 
 
-def _methods(result: JobResult) -> Iterator[tuple[str, ...]]:
+def _methods(found: Comparison) -> Iterator[tuple[str, ...]]:
     """Yield a row of each method, the answer first."""
-    spot, sharp = result.solution.hot_spot, len(result.solution.singular_corners) > 0
+    spot, sharp = found.solution.hot_spot, len(found.solution.singular_corners) > 0
     tau = sure(spot.stress_per_torque, spot.rel_error) if spot is not None else "none finite"
-    yield "this calculation", str(result.solution.torsion_constant), "", "", f"{tau} *" if sharp else tau, "", ""
-    for answer in result.hand:
-        yield _method(result, answer)
+    yield "this calculation", str(found.solution.torsion_constant), "", "", f"{tau} *" if sharp else tau, "", ""
+    for row in found.methods:
+        method = row.method
+        off = "" if math.isnan(row.stress_error) else percent(row.stress_error)
+        constant = number(method.torsion_constant, 6), percent(row.constant_error), row.stiffness
+        yield method.name.replace("_", " "), *constant, figure(method.stress_per_torque), off, row.strength
 
 
-def _method(result: JobResult, answer: HandAnswer) -> tuple[str, ...]:
-    j, spot = result.solution.torsion_constant, result.solution.hot_spot
-    constant, stress = answer.torsion_constant, answer.stress_per_torque
-    stiff = "too stiff" if constant > j.upper else "too soft" if constant < j.lower else "within the bounds"
-    cells = (answer.name.replace("_", " "), number(constant, 6), percent(constant / j.value - 1.0), stiff)
-    if spot is None or len(result.solution.singular_corners):
-        return (*cells, figure(stress), "", "unbounded *")
-    off = stress / spot.stress_per_torque - 1.0
-    safe = "safe side" if off > spot.rel_error else "unsafe side" if off < -spot.rel_error else "the same"
-    return (*cells, figure(stress), percent(off), safe)
+def _errors(result: JobResult, found: Comparison) -> Block:
+    """Return the errors as a picture, and the reasons beside it."""
+    caption = "How far off the hand method is; hatched: not conservative."
+    height = 0.28 + 0.075 * len(found.methods)
+    picture = Picture("comparison", caption, lambda canvas: _draw_errors(canvas, result, found), height)
+    lines = ["Conservative for stiffness: the twist is not understated; for strength: the peak stress is not."]
+    if len(found.solution.singular_corners):
+        lines.append("* Beside sharp re-entrant corners, where the elastic stress is unbounded.")
+    reasons: dict[str, list[str]] = {}
+    for row in found.methods:
+        words = f"J: {row.constant_reason}. Peak: {row.stress_reason}."
+        reasons.setdefault(words, []).append(row.method.name.replace("_", " "))
+    lines += [f"{', '.join(names)}: {words}" for words, names in reasons.items()]
+    return Beside((picture,), (Lines(tuple(lines)),), 0.56)
 
 
-def _idealisation(result: JobResult) -> Block:
+def _draw_errors(canvas: Any, result: JobResult, found: Comparison) -> None:
+    from torsionfe.output.compare_plot import draw_errors
+
+    left, right = canvas.subplots(1, 2)
+    draw_errors(found, (left, right), unit=result.job.system.length, brief=True)
+    right.set_yticks([])  # the names stand beside the panel on the left
+
+
+def _idealisation(result: JobResult, found: Comparison) -> Block:
     """Return the drawing of the first idealisation, and its plates beside it."""
-    first, system = result.hand[0], result.job.system
+    first, system = found.methods[0].method, result.job.system
     caption = f"What the hand method takes the section for: {first.name.replace('_', ' ')}."
     shape = ratio(result.solution.outline, _SHARE * (WIDTH - GUTTER), around=0.2, beside=0.6, below=0.7)
-    picture = Picture("plates", caption, lambda canvas: _draw_plates(canvas, result), shape)
+    picture = Picture("plates", caption, lambda canvas: _draw_plates(canvas, result, first.plates), shape)
     if isinstance(first.answer, CellSum):
         cells = first.answer.cells
         sizes = [(wall.name or f"wall {k}", wall.length, wall.thickness) for k, wall in enumerate(cells.walls)]
@@ -87,10 +103,10 @@ def _idealisation(result: JobResult) -> Block:
     return Beside((picture,), (table, Lines((how, f"Its largest stress: {first.governing}."))), _SHARE)
 
 
-def _draw_plates(canvas: Any, result: JobResult) -> None:
+def _draw_plates(canvas: Any, result: JobResult, first: PlateSet | None) -> None:
     from torsionfe.output.plate_plot import plot_plates
 
-    first = result.hand[0].plates
+    assert first is not None  # a job's methods are all placed
     named = tuple(replace(plate, name=plain(legible(plate.name))) for plate in first.plates)
     plates = replace(first, plates=named)
     drawn = plot_plates(result.solution.outline, plates, canvas.add_subplot(), result.job.system.length)
@@ -102,7 +118,8 @@ def _draw_plates(canvas: Any, result: JobResult) -> None:
 
 def hand_references(result: JobResult) -> list[str]:
     """Return the sources of the hand method that are not those of the answer."""
-    if not any(isinstance(answer.answer, CellSum) for answer in result.hand):
+    methods = result.hand.methods if result.hand else ()
+    if not any(isinstance(row.method.answer, CellSum) for row in methods):
         return []
     return [
         "Bredt, R. (1896): Kritische Bemerkungen zur Drehungselastizität. Z. VDI 40.",

@@ -5,12 +5,13 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from torsionfe.job.by_hand import HandAnswer, hand_answers
+from torsionfe.job.by_hand import compared
 from torsionfe.job.job import Job, Tolerance
 from torsionfe.member.bar import Bar, BarResponse, SteppedBar
 from torsionfe.member.margins import MarginTable, margins
 from torsionfe.member.plastic import PlasticTorque, plastic_torque
 from torsionfe.outline.outline import Outline
+from torsionfe.study.compare import Comparison
 from torsionfe.torsion.solution import TorsionSolution
 from torsionfe.torsion.solve import solve_torsion
 
@@ -37,8 +38,8 @@ class JobResult:
         Where there are a bar, cases and allowables.
     plastic : PlasticTorque or None
         Where a yield strength in shear is known.
-    hand : tuple of HandAnswer
-        The hand method, by each idealisation; the first one is drawn.
+    hand : Comparison or None
+        The hand method beside the answer, by each idealisation; the first one is drawn. None where the job wants none.
     """
 
     job: Job
@@ -47,7 +48,7 @@ class JobResult:
     responses: tuple[BarResponse, ...]
     margins: MarginTable | None
     plastic: PlasticTorque | None
-    hand: tuple[HandAnswer, ...]
+    hand: Comparison | None
 
     @property
     def solutions(self) -> tuple[TorsionSolution, ...]:
@@ -92,7 +93,7 @@ def run_job(job: Job, progress: Progress | None = None) -> JobResult:
         say("fully plastic torque")
         plastic = plastic_torque(job.section.outline, allowables.shear_yield, solution)
     say("hand method")
-    return JobResult(job, solution, bar, responses, found, plastic, hand_answers(job))
+    return JobResult(job, solution, bar, responses, found, plastic, compared(job, solution))
 
 
 def _solved(

@@ -25,7 +25,7 @@ from torsionfe.outline.validate import CLEARANCE
 if TYPE_CHECKING:
     from torsionfe.outline.outline import Outline
 
-__all__ = ["SMOOTH", "fillet", "round_corners", "sharp_corners"]
+__all__ = ["SMOOTH", "fillet", "round_corners", "sharp_corners", "unfilleted"]
 
 #: Two edges that meet within this angle (radians) of straight on are smooth: no corner.
 SMOOTH = np.radians(0.1)
@@ -266,3 +266,28 @@ def _assemble(outline: Outline, edges: Edges, rows: Ints, cut: _Cut) -> Outline:
     loop = np.repeat(edges.loop, 2)
     parts = [(points[keep & (loop == k)], bulges[keep & (loop == k)]) for k in range(len(outline.voids) + 1)]
     return PlainOutline(*parts[0], voids=[PlainOutline(*part) for part in parts[1:]])
+
+
+def unfilleted(outline: Outline) -> Outline:
+    """Return a copy whose fillets are sharp again: re-entrant arcs tangent to a straight edge on both sides.
+
+    Raises
+    ------
+    OutlineError
+        The sharp corners would lie outside the outline's other edges.
+    """
+    from torsionfe.outline.outline import Outline as PlainOutline
+
+    edges = outline.edges
+    straight = edges.bulge == 0.0
+    tangent = np.abs(edges.interior_angle - np.pi) <= SMOOTH
+    turn = -4.0 * np.arctan(edges.bulge)  # of a fillet: above 0
+    round_ = (turn > 0.0) & (turn < 0.95 * np.pi) & straight[edges.previous] & straight[edges.following]
+    rows = np.flatnonzero(round_ & tangent & tangent[edges.following])
+    start, bulge, keep = edges.start.copy(), edges.bulge.copy(), np.ones(len(edges), dtype=bool)
+    reach = edges.radius[rows] * np.tan(0.5 * turn[rows])
+    start[edges.following[rows]] = edges.start[rows] + reach[:, None] * edges.tangents(rows, np.zeros(len(rows)))
+    keep[rows] = False
+    loops = [PlainOutline(start[keep & (edges.loop == k)], bulge[keep & (edges.loop == k)])
+             for k in range(len(outline.voids) + 1)]  # fmt: skip
+    return PlainOutline(loops[0].vertices, loops[0].bulges, voids=loops[1:])
