@@ -49,7 +49,7 @@ def test_the_cubics_are_on_the_circle():
 def test_a_drawing_says_sizes_units_and_numbers():
     drawing = BRACKET.plot(unit="mm")
     assert [text.get_text() for text in drawing.dimensions] == ["80 mm", "60 mm"]
-    assert (drawing.axes.get_xlabel(), drawing.axes.get_ylabel()) == ("x (mm)", "y (mm)")
+    assert (drawing.axes.get_xlabel(), drawing.axes.get_ylabel()) == ("x [mm]", "y [mm]")
     assert drawing.axes.get_aspect() == 1.0
     x0, x1 = drawing.axes.get_xlim()
     y0, y1 = drawing.axes.get_ylim()

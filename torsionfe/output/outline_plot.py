@@ -12,6 +12,7 @@ from torsionfe.outline import arcs
 from torsionfe.outline.edges import Edges
 from torsionfe.outline.fillets import SMOOTH
 from torsionfe.outline.outline import Outline
+from torsionfe.output.style import INK, MATERIAL, QUIET, label_axes, look, new_axes
 from torsionfe.text import number
 
 if TYPE_CHECKING:
@@ -23,7 +24,6 @@ if TYPE_CHECKING:
 
 __all__ = ["OutlinePlot", "outline_path", "plot_outline"]
 
-_FILL, _EDGE, _INK = "0.88", "0.15", "0.35"
 _MOST_NUMBERS = 60
 _ROOM = 0.06  # of the size: a smooth vertex nearer to another gets no number
 
@@ -108,20 +108,19 @@ def plot_outline(
     -------
     OutlinePlot
     """
-    import matplotlib.pyplot as plt
     from matplotlib.patches import PathPatch
 
-    if ax is None:
-        ax = plt.subplots(layout="constrained")[1]
-    material = PathPatch(outline_path(outline), facecolor=_FILL, edgecolor=_EDGE, linewidth=1.2)
+    with look():
+        ax = new_axes() if ax is None else ax
+    material = PathPatch(outline_path(outline), facecolor=MATERIAL, edgecolor=INK, linewidth=1.2)
     ax.add_patch(material)
     edges = outline.edges
     rows = _numbered(outline, edges) if vertex_numbers else np.zeros(0, dtype=np.int64)
-    (dots,) = ax.plot(*edges.start[rows].T, "o", color=_EDGE, markersize=3.0)
+    (dots,) = ax.plot(*edges.start[rows].T, "o", color=INK, markersize=3.0)
     numbers = _draw_numbers(ax, edges, rows)
     if vertex_numbers:
         for k, void in enumerate(outline.voids):
-            ax.text(*void.centroid, f"void {k}", ha="center", va="center", fontsize="small", color=_INK)
+            ax.text(*void.centroid, f"void {k}", ha="center", va="center", fontsize="small", color=QUIET)
     sizes = _draw_dimensions(ax, outline, unit) if dimensions else ()
     ax.set_aspect("equal")
     x0, y0, x1, y1 = outline.bounds
@@ -129,8 +128,7 @@ def plot_outline(
     behind = 2.2 * margin if dimensions else margin
     ax.set_xlim(x0 - behind, x1 + margin)
     ax.set_ylim(y0 - behind, y1 + margin)
-    ax.set_xlabel(f"x ({unit})" if unit else "x")
-    ax.set_ylabel(f"y ({unit})" if unit else "y")
+    label_axes(ax, unit)
     return OutlinePlot(ax, material, dots, numbers, sizes)
 
 
@@ -165,7 +163,7 @@ def _draw_numbers(ax: Axes, edges: Edges, rows: Ints) -> dict[int, Annotation]:
             ha="center",
             va="center",
             fontsize="small",
-            color=_EDGE,
+            color=INK,
         )
         for row, away in zip(rows, _outward(edges, rows), strict=True)
     }
@@ -177,14 +175,14 @@ def _draw_dimensions(ax: Axes, outline: Outline, unit: str) -> tuple[Text, ...]:
     step = 0.14 * outline.size
     x, y = x0 - step, y0 - step
     for corner in (x0, x1):
-        ax.plot([corner, corner], [y0 - 0.3 * step, y - 0.15 * step], color=_INK, linewidth=0.8)
+        ax.plot([corner, corner], [y0 - 0.3 * step, y - 0.15 * step], color=QUIET, linewidth=0.8)
     for corner in (y0, y1):
-        ax.plot([x0 - 0.3 * step, x - 0.15 * step], [corner, corner], color=_INK, linewidth=0.8)
-    arrow = {"arrowstyle": "<->", "shrinkA": 0.0, "shrinkB": 0.0, "color": _INK, "linewidth": 0.8}
+        ax.plot([x0 - 0.3 * step, x - 0.15 * step], [corner, corner], color=QUIET, linewidth=0.8)
+    arrow = {"arrowstyle": "<->", "shrinkA": 0.0, "shrinkB": 0.0, "color": QUIET, "linewidth": 0.8}
     ax.annotate("", (x1, y), (x0, y), arrowprops=arrow)
     ax.annotate("", (x, y1), (x, y0), arrowprops=arrow)
     wide, high = (f"{number(value, 5)} {unit}".strip() for value in (x1 - x0, y1 - y0))
     return (
-        ax.text(0.5 * (x0 + x1), y, wide, ha="center", va="bottom", color=_INK),
-        ax.text(x, 0.5 * (y0 + y1), high, ha="right", va="center", rotation=90, color=_INK),
+        ax.text(0.5 * (x0 + x1), y, wide, ha="center", va="bottom", color=QUIET),
+        ax.text(x, 0.5 * (y0 + y1), high, ha="right", va="center", rotation=90, color=QUIET),
     )

@@ -15,6 +15,7 @@ from torsionfe.closed_form.derived import DerivedPlates
 from torsionfe.closed_form.plates import Plate
 from torsionfe.errors import InputError
 from torsionfe.outline.outline import Outline
+from torsionfe.output.style import ACCENTS, HATCH, INK, MATERIAL, QUIET, label_axes, look, new_axes
 from torsionfe.text import number, percent
 
 if TYPE_CHECKING:
@@ -26,15 +27,15 @@ if TYPE_CHECKING:
 
 __all__ = ["PlateDrawing", "plot_plates"]
 
-_SECTION, _EDGE = "0.88", "0.35"
-_PLATE = "#0072b2"  # blue that every common colour blindness keeps apart from the grey (Okabe and Ito 2008)
-_CELL = "#d55e00"
+_PLATE, _CELL = ACCENTS[0].colour, ACCENTS[1].colour
 _SIDES = {
     **dict.fromkeys(("top", "y"), np.array([0.0, 1.0])),
     **dict.fromkeys(("right", "x"), np.array([1.0, 0.0])),
     "bottom": np.array([0.0, -1.0]),
     "left": np.array([-1.0, 0.0]),
 }
+#: Names that speak of a direction: that of the plate's middle line.
+_ALONG = {"level": 0, "upright": 1}
 _SAME = 0.02  # of a size: plates given by hand are drawn where derived ones are as nearly as large
 
 
@@ -89,20 +90,19 @@ def plot_plates(
     InputError
         ``plates`` are no plates, or none.
     """
-    import matplotlib.pyplot as plt
-
     given = list(plates)
     if not all(isinstance(plate, Plate) for plate in given):
         raise InputError(f"plates must be a sequence of Plate, got {given!r:.80}")
     placed = plates if isinstance(plates, DerivedPlates) else _placed(outline, given, plates)
     if not given and placed.closed is None:
         raise InputError("plates is empty: there is nothing to draw")
-    axes = plt.subplots(figsize=(6.4, 6.0), layout="constrained")[1] if ax is None else ax
-    section = _patch(outline.polygon(1e-4 * outline.size), facecolor=_SECTION, edgecolor=_EDGE, lw=1.2)
+    with look():
+        axes = new_axes((6.4, 6.0)) if ax is None else ax
+    section = _patch(outline.polygon(1e-4 * outline.size), facecolor=MATERIAL, edgecolor=INK, lw=1.2)
     axes.add_patch(section)
     unplaced = tuple(k for k, line in enumerate(placed.centre_lines) if line is None)
     regions = tuple(
-        _patch(piece, facecolor="none", edgecolor=_EDGE, hatch="////", lw=0.0)
+        _patch(piece, facecolor="none", edgecolor=QUIET, hatch=HATCH, lw=0.0)
         for piece in ([] if unplaced else placed.unplated_regions())
     )
     rectangles = tuple(
@@ -158,7 +158,8 @@ def _towards(name: str, line: Floats | None, outline: Outline) -> float:
     """Return how far a line lies on the side that a plate's name speaks of: equal plates stay apart."""
     assert line is not None
     offset = line.mean(axis=0) - np.array(outline.centroid)
-    return float(sum(_SIDES.get(word, np.zeros(2)) @ offset for word in name.split()))
+    aside = sum(_SIDES.get(word, np.zeros(2)) @ offset for word in name.split())
+    return float(aside + sum(np.ptp(line[:, _ALONG[word]]) for word in name.split() if word in _ALONG))
 
 
 def _label(axes: Axes, outline: Outline, plate: Plate, line: Floats) -> Text:
@@ -187,9 +188,7 @@ def _finish(
     axes.set_xlim(x0 - room, x1 + room)
     axes.set_ylim(y0 - room, y1 + room)
     axes.set_aspect("equal")
-    suffix = f" [{unit}]" if unit else ""
-    axes.set_xlabel(f"x{suffix}")
-    axes.set_ylabel(f"y{suffix}")
+    label_axes(axes, unit)
     title = f"Plates: {placed.idealisation.replace('_', ' ') or 'given by hand'}"
     if unplaced:
         title += f"\nno place found for {', '.join(placed.plates[k].label(k) for k in unplaced)}"
