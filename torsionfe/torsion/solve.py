@@ -53,6 +53,16 @@ def solve_torsion(
         An argument is out of its range.
     MeshError
         The outline can't be triangulated; ``at`` names the place.
+
+    Examples
+    --------
+    >>> from torsionfe.outline.shapes import tube
+    >>> solution = solve_torsion(tube(50.0, 5.0), rel_tol=1e-4)
+    >>> exact = 3.141592653589793 / 32.0 * (50.0**4 - 40.0**4)
+    >>> solution.torsion_constant.lower < exact < solution.torsion_constant.upper
+    True
+    >>> round(solution.section_modulus / (exact / 25.0), 3)
+    1.0
     """
     from torsionfe.mesh.triangulate import triangulate
 
