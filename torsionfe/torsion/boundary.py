@@ -14,10 +14,10 @@ import numpy as np
 from torsionfe.checks import Floats, Ints
 from torsionfe.fem.elements import line_gradient
 from torsionfe.fem.geometry import side_curve
+from torsionfe.fem.space import Space
 from torsionfe.mesh.trimesh import TriMesh
-from torsionfe.torsion.fields import Fields
 
-__all__ = ["BoundaryStress", "boundary_stress", "walking_order"]
+__all__ = ["BoundaryStress", "along_sides", "boundary_stress", "walking_order"]
 
 
 @dataclass(frozen=True)
@@ -58,22 +58,40 @@ def walking_order(mesh: TriMesh) -> Ints:
     return np.lexsort((mesh.side_span[:, 0], mesh.side_edge))
 
 
-def _tau(fields: Fields, sides: Ints, t: Floats) -> tuple[Floats, Floats, Floats]:
-    """Return stress, points and speed ``ds/dt`` at fractions ``t`` of the sides' chords."""
-    points, derivative = side_curve(fields.space.mesh, sides, t)
+def along_sides(space: Space, omega: Floats, sides: Ints, t: Floats) -> tuple[Floats, Floats, Floats]:
+    """Return the shear stress along boundary sides from the warping function, for ``G theta' = 1``.
+
+    Parameters
+    ----------
+    space : Space
+    omega : ndarray of shape (n,)
+        The warping function, length**2.
+    sides : ndarray of shape (k,)
+    t : ndarray of shape (g,)
+        Fractions of the sides' chords.
+
+    Returns
+    -------
+    tau : ndarray of shape (k, g)
+        Along the walking direction (length).
+    points : ndarray of shape (k, g, 2)
+    speed : ndarray of shape (k, g)
+        ``ds/dt``.
+    """
+    points, derivative = side_curve(space.mesh, sides, t)
     speed = np.hypot(derivative[..., 0], derivative[..., 1])
     tangent = derivative / speed[..., None]
-    slope = fields.omega[fields.space.side_dofs[sides]] @ line_gradient(fields.space.order, t).T
+    slope = omega[space.side_dofs[sides]] @ line_gradient(space.order, t).T
     tau = slope / speed + points[..., 0] * tangent[..., 1] - points[..., 1] * tangent[..., 0]
     return tau, points, speed
 
 
-def boundary_stress(fields: Fields) -> BoundaryStress:
+def boundary_stress(space: Space, omega: Floats) -> BoundaryStress:
     """Return the shear stress along the boundary from the warping function."""
-    mesh = fields.space.mesh
+    mesh = space.mesh
     sides = walking_order(mesh)
-    gauss = 0.5 * (1.0 + np.polynomial.legendre.leggauss(fields.space.order)[0])
-    tau, points, _ = _tau(fields, sides, gauss)
+    gauss = 0.5 * (1.0 + np.polynomial.legendre.leggauss(space.order)[0])
+    tau, points, _ = along_sides(space, omega, sides, gauss)
     edge, span = mesh.side_edge[sides], mesh.side_span[sides]
     total = mesh.edges.length[edge]
     # on an arc the chord fraction and the arc fraction differ by the third order of the sweep
@@ -81,7 +99,7 @@ def boundary_stress(fields: Fields) -> BoundaryStress:
     safe = np.where(half == 0.0, 1.0, half)
     bent = np.where(half == 0.0, gauss, 0.5 + np.arcsin((2.0 * gauss - 1.0) * np.sin(safe)) / (2.0 * safe))
     position = (span[:, :1] + np.diff(span, axis=1) * bent) * total[:, None]
-    ends, _, _ = _tau(fields, sides, np.array([0.0, 1.0]))
+    ends, _, _ = along_sides(space, omega, sides, np.array([0.0, 1.0]))
     joined = edge[1:] == edge[:-1]
     step = np.where(joined, np.abs(ends[1:, 0] - ends[:-1, 1]), 0.0)
     jump = np.maximum(np.append(step, 0.0), np.append(0.0, step))

@@ -12,7 +12,7 @@ Math. 5, 241-269). Elements carry arcs exactly, so the bounds are those of the o
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -22,7 +22,7 @@ from torsionfe.fem.solve import solve_constrained
 from torsionfe.fem.space import Space, space_of
 from torsionfe.mesh.trimesh import TriMesh
 
-__all__ = ["Fields", "solve_fields"]
+__all__ = ["Fields", "carried", "solve_fields", "solve_warping"]
 
 
 @dataclass(frozen=True)
@@ -65,8 +65,35 @@ def solve_fields(mesh: TriMesh, order: int) -> Fields:
     system = assemble(space_of(mesh, order))
     unknown, source = _stress_function_problem(system)
     phi = solve_constrained(system.space, system.stiffness, source, unknown)
+    return _bounded(system, source, phi, _warping(system))
+
+
+def solve_warping(mesh: TriMesh, order: int) -> tuple[Space, Floats]:
+    """Solve for the warping function alone; return it with its space."""
+    system = assemble(space_of(mesh, order))
+    return system.space, _warping(system)
+
+
+def _warping(system: System) -> Floats:
     pinned = np.arange(-1, system.space.size - 1)
-    omega = solve_constrained(system.space, system.stiffness, system.twist, pinned)
+    return solve_constrained(system.space, system.stiffness, system.twist, pinned)
+
+
+def carried(fields: Fields, mesh: TriMesh) -> Fields:
+    """Return the same functions as trial functions on a mesh whose nodes moved, with the bounds that they give there.
+
+    Parameters
+    ----------
+    fields : Fields
+    mesh : TriMesh
+        The triangles of ``fields.space.mesh``; its outline may be another one.
+    """
+    system = assemble(replace(fields.space, mesh=mesh))
+    return _bounded(system, _stress_function_problem(system)[1], fields.phi, fields.omega)
+
+
+def _bounded(system: System, source: Floats, phi: Floats, omega: Floats) -> Fields:
+    """Return both functions with the bounds that they give, solutions or not."""
     parts = energies(system, phi, omega)
     lower = 2.0 * float(source @ phi) - float(parts.phi.sum())
     return Fields(system, phi, omega, parts, lower, float(parts.omega.sum()))

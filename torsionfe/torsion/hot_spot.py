@@ -11,7 +11,7 @@ from torsionfe.checks import Floats, Ints
 from torsionfe.outline.fillets import sharp_corners
 from torsionfe.torsion.boundary import BoundaryStress
 
-__all__ = ["HotSpot", "Peak", "find_peaks", "plateau_share", "tied_peaks"]
+__all__ = ["HotSpot", "Peak", "find_peaks", "heights", "plateau_share", "tied_peaks"]
 
 _FIT_DEGREE = 3
 _RISE = 0.02  # a rise this small on the way down from a corner is noise of the mesh
@@ -72,6 +72,11 @@ def find_peaks(stress: BoundaryStress) -> Peak:
     doubt = np.maximum(scatter, 0.5 * np.abs(tau - height[top])) / tau
     order = np.argsort(-tau, kind="stable")
     return Peak(tau[order], points[order], doubt[order], top[order])
+
+
+def heights(stress: BoundaryStress, sides: Ints) -> Floats:
+    """Return the largest size of the stress on some sides, taken as that of a peak is; shape (k,)."""
+    return _fitted(stress, np.abs(stress.tau), sides)[0]
 
 
 def _loop_neighbours(stress: BoundaryStress) -> tuple[Ints, Ints]:

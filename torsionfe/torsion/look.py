@@ -42,7 +42,7 @@ class Look:
 def look_at(mesh: TriMesh, order: int, before: Peak | None) -> Look:
     """Solve one mesh and look at it, beside the peaks that the mesh ``before`` it showed."""
     fields = solve_fields(mesh, order)
-    boundary = boundary_stress(fields)
+    boundary = boundary_stress(fields.space, fields.omega)
     peak = find_peaks(boundary)
     return Look(fields, boundary, peak, _peak_error(peak, before))
 
