@@ -16,7 +16,7 @@ from torsionfe.checks import Floats, Ints, finite, positive
 from torsionfe.errors import InputError, TorsionError
 from torsionfe.mesh.trimesh import TriMesh
 from torsionfe.outline.outline import Outline
-from torsionfe.text import number, percent, table
+from torsionfe.text import number, percent, signed_percent, table
 from torsionfe.torsion.hot_spot import find_peaks
 from torsionfe.torsion.moving import Carrier, bound_rates, log_heights
 from torsionfe.torsion.solution import TorsionSolution
@@ -121,22 +121,11 @@ def _row(effect: DimensionEffect) -> list[str]:
         return [effect.name, number(effect.value, 6), "not defined", "", "", "", "", effect.note]
     cells = [effect.name, number(effect.value, 6), f"{effect.constant_change:+.4g}"]
     undecided = effect.constant_undecided and effect.constant_change != 0.0
-    cells.append("undecided" if undecided else signed_percent(effect.constant_share))
+    cells.append("undecided" if undecided else signed_percent(effect.constant_share, 3))
     cells.append(percent(effect.constant_error / abs(effect.constant_change or 1.0) * abs(effect.constant_share)))
     if math.isnan(effect.peak_share):
         return [*cells, "", "", effect.note]
     return [*cells, peak_words(effect), percent(effect.peak_error), effect.note]
-
-
-def signed_percent(share: float) -> str:
-    """Return a share as percent with its sign, to three digits.
-
-    Examples
-    --------
-    >>> signed_percent(0.012345), signed_percent(-2e-5), signed_percent(0.0)
-    ('+1.23 %', '-0.002 %', '0 %')
-    """
-    return f"{number(100.0 * share, 3)} %" if share <= 0.0 else f"+{number(100.0 * share, 3)} %"
 
 
 def peak_words(effect: DimensionEffect) -> str:
@@ -145,8 +134,8 @@ def peak_words(effect: DimensionEffect) -> str:
         return "undecided"
     forth, back = effect.peak_share, effect.peak_share_back
     if abs(forth + back) <= effect.peak_error + 0.02 * abs(forth):
-        return signed_percent(forth)
-    return f"{signed_percent(forth)}, back {signed_percent(back)}"
+        return signed_percent(forth, 3)
+    return f"{signed_percent(forth, 3)}, back {signed_percent(back, 3)}"
 
 
 def sensitivity(

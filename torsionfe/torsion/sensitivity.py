@@ -212,6 +212,7 @@ class _Walk:
         tangents = side_curve(space.mesh, sides, t)[1] / speed[..., None]
         normals = np.stack([tangents[..., 1], -tangents[..., 0]], axis=-1)
         lengths = 0.5 * weights * speed
+        lengths *= (solution.boundary.length / lengths.sum(axis=1))[:, None]  # those of the arcs to the last digit
         return cls(solution.boundary.edge, points, normals, lengths, tau**2 * lengths)
 
 
