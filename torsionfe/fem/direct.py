@@ -28,8 +28,9 @@ def factorised(matrix: csr_array) -> Callable[[Floats], Floats]:
     from scipy.sparse import csc_array
     from scipy.sparse.linalg import splu
 
-    # the matrix is symmetric, so its rows serve as columns
-    columns = csc_array((matrix.data, matrix.indices, matrix.indptr), shape=matrix.shape)
+    # the matrix is symmetric, so its rows serve as columns; older scipy takes no longer integers
+    indices, pointers = (part.astype(np.int32, copy=False) for part in (matrix.indices, matrix.indptr))
+    columns = csc_array((matrix.data, indices, pointers), shape=matrix.shape)
     try:
         factor = splu(columns, permc_spec="MMD_AT_PLUS_A", diag_pivot_thresh=0.0, options={"SymmetricMode": True})
     except RuntimeError as error:

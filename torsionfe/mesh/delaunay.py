@@ -78,8 +78,8 @@ class Web:
         misrepresent the arcs.
         """
         open_ = (side_at < 0) & (self.beyond >= 0)
-        start = np.concatenate([[0], np.cumsum(open_.sum(axis=1))])
-        links = self.beyond[open_]
+        start = np.concatenate([[0], np.cumsum(open_.sum(axis=1))]).astype(np.int32)
+        links = self.beyond[open_].astype(np.int32)  # older csgraph takes no other integers
         graph = csr_array((np.ones(len(links)), links, start), shape=(len(open_), len(open_)))
         count, region = connected_components(graph, directed=False)
         inside, outside = np.zeros(count, dtype=bool), np.zeros(count, dtype=bool)

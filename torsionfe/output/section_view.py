@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import warnings
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
@@ -36,6 +37,7 @@ __all__ = [
     "legend_above",
     "level_values",
     "place_label",
+    "points_per_length",
     "section_figure_size",
     "sideways",
     "upright_bar",
@@ -185,7 +187,9 @@ def fill(
         extend="max" if beyond else "neither",
         zorder=1.0,
     )
-    contours.set_rasterized(True)
+    with warnings.catch_warnings():  # matplotlib before 3.11 can't, and draws them as lines
+        warnings.filterwarnings("ignore", "Rasterization of", UserWarning)
+        contours.set_rasterized(True)
     contours.set_clip_path(inside)
     return contours
 
@@ -266,7 +270,7 @@ def place_label(
 
     size = FontProperties(size="small").get_size_in_points()
     half = np.array([0.30 * size * len(text) + 3.0, 0.75 * size])
-    per_point = 1.0 / _points_per_length(ax)
+    per_point = 1.0 / points_per_length(ax)
     away = [(r, a) for r in (14.0, 20.0, 28.0, 40.0, 56.0, 76.0) for a in np.radians(np.arange(0.0, 360.0, 15.0))]
     (x0, x1), (y0, y1) = ax.get_xlim(), ax.get_ylim()
     points = np.concatenate([np.reshape(np.asarray(avoid, dtype=float), (-1, 2)), np.reshape(spots, (-1, 2))])
@@ -296,7 +300,7 @@ def place_label(
     )
 
 
-def _points_per_length(ax: Axes) -> float:
+def points_per_length(ax: Axes) -> float:
     """Return about how many points of print a length is drawn on."""
     box = ax.get_window_extent()
     dots = 72.0 / ax.figure.dpi
