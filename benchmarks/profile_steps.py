@@ -71,10 +71,10 @@ def main() -> None:
         rows[-1] += [f"{solution.fields.space.size}", f"{len(solution.passes)}"]
     head = ["step, ms"] + [cell for name in found for cell in (name, "")]
     notes = [
-        "Quadratic elements; J within 1e-4 and peak within 0.2 % unless said otherwise; medians. Outline: built and validated (no part of the"
-        " times in other tables). Constrain: rows and"
-        " columns of the void constants tied, of zero values dropped. Solve: both systems. Bound: energies of each"
-        " triangle. Peak: stress along the boundary and its summits.",
+        "Quadratic elements; J within 1e-4 and peak within 0.2 % unless said otherwise; medians. Outline: built and"
+        " validated (no part of the times in other tables). Constrain: rows and columns of the void constants tied, of"
+        " zero values dropped. Solve: both systems. Bound: energies of each triangle. Peak: stress along the boundary"
+        " and its summits.",
     ]
     publish("profile_steps", "Where the time goes", head, rows, notes)
     again = list(asked_again(found["box"][1]))

@@ -1,10 +1,14 @@
 """What the benchmarks share: fair timing, the machine in general terms, and tables on screen and in Markdown."""
 
 import gc
+import json
 import math
 import os
 import platform
+import resource
 import statistics
+import subprocess
+import sys
 import time
 from pathlib import Path
 
@@ -32,6 +36,29 @@ def seconds(function, *given, **options):
     started = time.perf_counter()
     result = function(*given, **options)
     return time.perf_counter() - started, result
+
+
+def child(script, *arguments) -> dict:
+    """Run a benchmark's script in a process of its own and return what it said (see `say`)."""
+    command = [sys.executable, str(script), *map(str, arguments)]
+    return json.loads(subprocess.run(command, check=True, capture_output=True, text=True).stdout.splitlines()[-1])
+
+
+def say(**found) -> None:
+    """Print, as the last line of a child process, what it found."""
+    print(json.dumps(found))
+
+
+def grown() -> int:
+    """Return the largest memory (resident set, bytes) that this process has had so far.
+
+    On Linux from the kernel's own file: what `resource` tells begins with that of the process it was forked from.
+    """
+    status = Path("/proc/self/status")
+    if status.exists():
+        return next(int(line.split()[1]) * 1024 for line in status.read_text().splitlines() if "VmHWM" in line)
+    unit = 1 if sys.platform == "darwin" else 1024
+    return resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * unit
 
 
 def median(values) -> float:

@@ -1,4 +1,4 @@
-"""Time by step: wraps the functions of the solver while a block runs, each second counted once, at the innermost step."""
+"""Time by step: wraps the solver's functions while a block runs; each second counts once, at the innermost step."""
 
 import importlib
 import time

@@ -158,7 +158,8 @@ def main() -> None:
     everything = []
     for label in SETTINGS:
         everything += [[f"*{label}*", *[""] * (len(HEAD) - 1)], *_section(label, names, measured, known)]
-    publish("suite_full" if not given.only else "suite_part.tmp", "Twelve outlines, four settings", HEAD, everything, notes)
+    name = "suite_full" if not given.only else "suite_part.tmp"
+    publish(name, "Twelve outlines, four settings", HEAD, everything, notes)
     if given.only:
         return
     short = [_section(label, names, measured, known) for label in SHORT]
