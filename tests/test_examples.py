@@ -1,6 +1,7 @@
 """The examples: every job file gives its sheet, every script runs, and what they print is right."""
 
 import dataclasses
+import json
 import math
 import re
 import runpy
@@ -14,7 +15,9 @@ import pytest
 from test_sheet import CHROMIUM, PDFTOPPM, PDFTOTEXT, Reading, ink, needs_chromium, needs_poppler, pdf_text
 
 from torsionfe.cautions import MARGINS
+from torsionfe.errors import InputError
 from torsionfe.job.content import sheet_of
+from torsionfe.job.data import csv_files, result_document
 from torsionfe.job.keys import SHEET_SECTIONS
 from torsionfe.job.reading import read_job
 from torsionfe.job.running import run_job
@@ -83,9 +86,9 @@ def test_every_sheet_is_complete(name):
     found = words(sheet(name))
     titles = list(found)
     wanted = ["", "Section", "Inputs", "Method and assumptions", "Torsion constant", "Shear stress", "Hand method"]
-    wanted += ["Bar", "Warnings", "Cautions", "References", "To make this sheet again"]
+    wanted += ["Bar", "Sensitivity", "Warnings", "Cautions", "References", "To make this sheet again"]
     assert titles == [title for title in wanted if title in titles]
-    assert set(wanted) - set(titles) <= {"Hand method"}
+    assert set(wanted) - set(titles) <= {"Hand method", "Sensitivity"}
     assert found["Cautions"][: len(MARGINS)] == list(MARGINS)
     assert found["Warnings"] == ["None: no sharp corners, no unrestored facets, tolerances met."]
     text = "\n".join(line for lines in found.values() for line in lines)
@@ -168,6 +171,99 @@ def test_margins_on_the_sheet_are_those_of_the_bar():
         assert float(row[6]) == pytest.approx(margin.margin, abs=1.01e-3)
         assert float(row[6]) <= margin.margin  # rounded down
         assert float(row[7]) <= margin.largest_torque
+
+
+def test_sensitivity_of_dimensions_and_of_edges():
+    lever = words(sheet("sluice_lever"))["Sensitivity"]
+    assert lever[1] == "What 0.1 mm more on each dimension does, the others kept:"
+    rows = [line.split(" | ") for line in lever if line.count(" | ") == 4][1:]
+    effects = result("sluice_lever").sensitivity
+    assert [row[0] for row in rows] == ["leg x", "leg y", "thickness", "root radius", "toe radius"]
+    for row, effect in zip(rows, effects, strict=True):
+        assert float(row[2].split(" ± ")[0]) == pytest.approx(effect.constant_change, rel=1e-3)
+        assert float(row[4].removesuffix(" %")) == pytest.approx(100.0 * effect.peak_share, rel=5e-3)
+    plank = words(sheet("deck_plank"))["Sensitivity"]
+    assert plank[1] == "What 0.1 mm more material along a whole edge does; the edges that count most:"
+    rows = [line.split(" | ") for line in plank if line.count(" | ") == 3][1:]
+    assert rows[0][0] == "0 to 1"
+    gains = [float(row[2].split(" ± ")[0]) for row in rows]
+    assert gains == sorted(gains, reverse=True)
+    assert "fillet at" in plank[-2]
+
+
+HELD = """
+title = "Post"
+unit = "mm"
+[outline]
+shape = "wide_flange"
+depth = 120
+flange_width = 80
+flange_thickness = 8
+web_thickness = 5
+root_radius = 6
+[material]
+source = "invented"
+shear_modulus = "27 GPa"
+elastic_modulus = "71 GPa"
+shear_yield = "110 MPa"
+[[cases]]
+name = "gust"
+torque = "150 N*m"
+[bar]
+length = "1.2 m"
+warping_held = "near"
+[buckling]
+force = "40 kN"
+[sheet]
+sections = ["bar", "references"]
+[outputs]
+csv = true
+"""
+
+
+def test_held_warping_and_buckling_on_the_sheet(tmp_path):
+    (tmp_path / "post.toml").write_text(HELD)
+    answer = run_job(read_job(tmp_path / "post.toml"))
+    found = words(sheet_of(answer))
+    solution, length = answer.solution, 1200.0
+    rigidity, warping = 27e3 * solution.torsion_constant.value, 71e3 * solution.warping_constant
+    decay = math.sqrt(warping / rigidity)
+    # a cantilever whose held end cannot warp (Vlasov): theta = T / (G J) (L - tanh(k L) / k), B(0) = T tanh(k L) / k
+    turn = 150e3 / rigidity * (length - decay * math.tanh(length / decay))
+    moment = 150e3 * decay * math.tanh(length / decay)
+    row = next(line for line in found["Bar"] if line.startswith("gust | 0."))
+    numbers = row.replace("×10", "e").translate(str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹", "0123456789")).split(" | ")
+    assert float(numbers[1]) == pytest.approx(turn, rel=1e-3)
+    assert float(numbers[3]) == pytest.approx(moment, rel=1e-3)
+    assert numbers[4] == "100 %"
+    added = moment * max(map(abs, solution.warping_extremes)) / solution.warping_constant
+    assert float(numbers[5]) == pytest.approx(added, rel=1e-3)
+    text = "\n".join(line for lines in found.values() for line in lines)
+    wanted = [f"decay length √(E C_w / (G J)) | {decay:.4g}", "stands in none of the margins", "buckles first by | "]
+    wanted += ["lower load over 40000 N", "Vlasov, V. Z.", "Elastic torsional buckling of a perfect"]
+    assert [said for said in wanted if said not in text] == []
+    assert any(line.startswith("Warping held adds normal stress of up to") for line in found[""])
+    assert any(line.startswith("As a column it buckles elastically by") for line in found[""])
+    assert "caution: Restrained warping by Vlasov's theory" in result_words(answer)
+    # Timoshenko and Gere, art. 5.4
+    area, _, (i_x, i_y, _) = solution.outline.edges.moments()
+    load = (rigidity + math.pi**2 * warping / length**2) / ((i_x + i_y) / area)
+    assert answer.buckling.load == pytest.approx(load, rel=2e-3)
+    parts = json.loads(result_document(answer))["parts"]
+    assert parts["restrained_warping"][0]["largest_bimoment"]["value"] == pytest.approx(moment, rel=1e-6)
+    assert parts["buckling"]["force"] == 40e3
+    assert any("Vlasov" in line for line in parts["cautions"])
+    assert "sensitivity" not in parts
+    assert "sensitivity.csv" not in csv_files(answer)
+    assert "root_radius,7.0,0.1," in csv_files(result("sluice_lever"))["sensitivity.csv"]
+
+
+def test_a_section_that_must_not_be_checked_by_that_formula(tmp_path):
+    text = (EXAMPLES / "sluice_lever.toml").read_text()
+    text = text.replace("shear_modulus =", 'elastic_modulus = "105 GPa"\nshear_modulus =')
+    (tmp_path / "lever.toml").write_text(text + "\n[buckling]\n")
+    with pytest.raises(InputError, match=r"^\[buckling\]: the centre of twist .* is off the centroid"):
+        run_job(read_job(tmp_path / "lever.toml"))
 
 
 def test_a_choice_of_sections_and_paper():

@@ -33,6 +33,7 @@ _ANGLES: Mapping[str, float] = {"rad": 1.0, "deg": math.pi / 180.0}
 #: (force, length, angle) exponents of each kind of number
 _KINDS: Mapping[str, tuple[int, int, int]] = {
     "length": (0, 1, 0),
+    "force": (1, 0, 0),
     "torque": (1, 1, 0),
     "stress": (1, -2, 0),
     "angle": (0, 0, 1),
@@ -40,6 +41,7 @@ _KINDS: Mapping[str, tuple[int, int, int]] = {
 }
 _EXAMPLES: Mapping[str, str] = {
     "length": "600 mm",
+    "force": "20 kN",
     "torque": "450 N*m",
     "stress": "27 GPa",
     "angle": "1.5 deg",
@@ -58,7 +60,7 @@ class Quantity:
     value : float
         In N, m and rad where the unit was given; else as it was.
     kind : str
-        ``length``, ``torque``, ``stress``, ``angle`` or ``twist rate``.
+        ``length``, ``force``, ``torque``, ``stress``, ``angle`` or ``twist rate``.
     unit : str
         As given; empty for a bare number.
     """
@@ -77,7 +79,7 @@ def parse_quantity(name: str, given: Any, kind: str) -> Quantity:
         What messages call it.
     given : str or float
     kind : str
-        What it must be: ``length``, ``torque``, ``stress``, ``angle`` or ``twist rate``.
+        What it must be: ``length``, ``force``, ``torque``, ``stress``, ``angle`` or ``twist rate``.
 
     Raises
     ------

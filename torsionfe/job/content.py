@@ -9,13 +9,14 @@ from collections.abc import Callable, Iterator
 from typing import Any
 
 from torsionfe import __version__
-from torsionfe.cautions import MARGINS, PLASTIC
 from torsionfe.job import findings
 from torsionfe.job.bar_section import bar_section
+from torsionfe.job.data import cautions_of
 from torsionfe.job.hand_section import hand_references, hand_section
 from torsionfe.job.job import Job
 from torsionfe.job.keys import KEYS
 from torsionfe.job.running import JobResult
+from torsionfe.job.sensitivity_section import sensitivity_section
 from torsionfe.job.table import Stated
 from torsionfe.job.words import between, measured, signed, sure, written_unit
 from torsionfe.output.sheet import GUTTER, WIDTH, Beside, Block, Cells, Facts, Lines, Picture, Sheet, SheetSection
@@ -44,7 +45,7 @@ def sheet_of(result: JobResult) -> Sheet:
         "stress": lambda: findings.stress(result),
         "hand": lambda: hand_section(result),
         "bar": lambda: bar_section(result),
-        "sensitivity": lambda: findings.sensitivity(result),
+        "sensitivity": lambda: sensitivity_section(result),
     }
     chosen = [makers[name]() for name in job.sheet.sections if name in makers]
     last = [_references(result)] if "references" in job.sheet.sections else []
@@ -99,6 +100,14 @@ def verdict(result: JobResult) -> Iterator[str]:
         where = f", segment {worst.segment}" if worst.segment and len(result.bar.segments) > 1 else ""  # type: ignore[union-attr]
         size = signed(worst.margin) if worst.defined else worst.note
         yield f"Smallest margin of safety {size}; case {worst.case}{where}, {worst.criterion}"
+    held = max(result.restrained, key=lambda one: one.largest_normal_stress[0], default=None)
+    if held is not None and held.warps:
+        added = measured(held.largest_normal_stress[0], system.stress, 4)
+        yield f"Warping held adds normal stress of up to {added}, which is in no margin"
+    if result.buckling is not None:
+        least = min(result.buckling.load, result.buckling.flexural_load)
+        way = "twisting" if result.buckling.torsion_governs else "bending"
+        yield f"As a column it buckles elastically by {way}, at {measured(least, system.force, 4)}"
     if any(not one.converged for one in result.solutions):
         yield "The tolerance was not met: see the warnings"
 
@@ -122,9 +131,9 @@ def _section(job: Job) -> SheetSection:
         *(("note", note) for note in job.section.notes),
     ]
     caption = f"The section to scale, axes in {unit}; the numbers are those of its vertices."
-    shape = findings.ratio(outline, 0.46 * (WIDTH - GUTTER), around=0.32, beside=0.6, below=0.5)
+    shape = findings.ratio(outline, 0.36 * (WIDTH - GUTTER), around=0.32, beside=0.6, below=0.5)
     picture = Picture("section", caption, lambda canvas: _draw_section(canvas, job), shape)
-    return SheetSection("Section", (Beside((picture,), (Facts(tuple(rows)),), 0.46),))
+    return SheetSection("Section", (Beside((picture,), (Facts(tuple(rows)),), 0.36),))
 
 
 def _draw_section(canvas: Any, job: Job) -> None:
@@ -134,7 +143,7 @@ def _draw_section(canvas: Any, job: Job) -> None:
 
 
 _LONG = 6  # rows: more inputs are set in two columns
-_UNITS = {"length": "length", "torque": "torque", "stress": "stress"}
+_UNITS = {"length": "length", "force": "force", "torque": "torque", "stress": "stress"}
 
 
 def _inputs(job: Job) -> SheetSection:
@@ -211,8 +220,7 @@ def _method(result: JobResult) -> SheetSection:
 
 
 def _cautions(result: JobResult) -> SheetSection:
-    lines = (*MARGINS, *(PLASTIC if result.plastic is not None else ()))
-    return SheetSection("Cautions", (Lines(lines, "caution"),))
+    return SheetSection("Cautions", (Lines(cautions_of(result), "caution"),))
 
 
 def _references(result: JobResult) -> SheetSection:
@@ -234,6 +242,13 @@ def _references(result: JobResult) -> SheetSection:
     if result.plastic is not None:
         lines.append("Nadai, A. (1923): Der Beginn des Fließvorganges in einem tordierten Stab. Z. angew. Math. "
                      "Mech. 3.")
+    if result.restrained:
+        lines.append("Vlasov, V. Z. (1940): Thin-walled Elastic Beams.")
+    if result.buckling is not None:
+        lines.append("Timoshenko, S. P.; Gere, J. M.: Theory of Elastic Stability, 2nd ed. 1961, article 5.4.")
+    if "sensitivity" in result.job.sheet.sections:
+        lines.append("Hadamard, J. (1908): Sur un problème d'analyse relatif à l'équilibre des plaques élastiques "
+                     "encastrées. Mém. prés. par divers savants 33.")
     return SheetSection("References", (Lines(tuple(lines), "list"),))
 
 
@@ -241,8 +256,8 @@ def _again(job: Job) -> SheetSection:
     files = tuple((file.name, file.sha256) for file in job.files)
     rows = (("program", f"torsionfe {__version__}"), ("digest of the inputs", job.digest))
     how = (
-        "The same files and version give this sheet again to the last byte (torsionfe run, same libraries). Digests "
-        "are SHA-256; that of the inputs is taken over the lines 'digest, two spaces, name' of the files in this order."
+        "Same files, version and libraries give this sheet again to the last byte (torsionfe run). Digests: SHA-256; "
+        "that of the inputs is taken over the lines 'digest, two spaces, name'."
     )
     return SheetSection(
         "To make this sheet again", (Facts(rows), Cells(("input file", "SHA-256"), files, words=2), Lines((how,)))

@@ -4,15 +4,17 @@ from __future__ import annotations
 
 from typing import Any
 
-from torsionfe.cautions import MARGINS, PLASTIC
+from torsionfe.cautions import BUCKLING, MARGINS, PLASTIC, RESTRAINT
 from torsionfe.job.findings import section_torque
 from torsionfe.job.running import JobResult
 from torsionfe.member.bar import BarResponse, SteppedBar
+from torsionfe.member.restrained import RestrainedBar
 from torsionfe.output.result_json import json_text, to_json
 from torsionfe.output.tables import Table, csv_text
 from torsionfe.study.compare import ComparedMethod
+from torsionfe.torsion.sensitivity import boundary_sensitivity
 
-__all__ = ["csv_files", "result_document"]
+__all__ = ["cautions_of", "csv_files", "result_document"]
 
 
 def result_document(result: JobResult) -> str:
@@ -27,7 +29,7 @@ def result_document(result: JobResult) -> str:
             "files": job.files,
             "digest": job.digest,
         },
-        "cautions": [*MARGINS, *(PLASTIC if result.plastic is not None else ())],
+        "cautions": cautions_of(result),
         "hand_method": [_hand(row) for row in result.hand.methods] if result.hand else [],
     }
     if result.bar is not None:
@@ -37,8 +39,39 @@ def result_document(result: JobResult) -> str:
         parts["margins"] = [{**_fields(row), "largest_torque": row.largest_torque} for row in result.margins]
     if result.plastic is not None:
         parts["plastic"] = {**_fields(result.plastic), "shape_factor": result.plastic.shape_factor}
+    if result.restrained:
+        parts["restrained_warping"] = [
+            _restrained(one, case.name) for one, case in zip(result.restrained, job.cases, strict=True)
+        ]
+    if result.buckling is not None and job.column is not None:
+        parts["buckling"] = {**_fields(job.column), **_fields(result.buckling)}
+    if "sensitivity" in job.sheet.sections:
+        parts["sensitivity"] = _sensitivity(result)
     torque = load[0] if load else None
     return json_text(to_json(result.solution, unit=job.system.length, torque=torque, parts=parts))
+
+
+def cautions_of(result: JobResult) -> tuple[str, ...]:
+    """Return what the numbers of a job do not cover."""
+    more = ((PLASTIC, result.plastic), (RESTRAINT, result.restrained), (BUCKLING, result.buckling))
+    return (*MARGINS, *(line for group, there in more if there for line in group))
+
+
+def _restrained(one: RestrainedBar, case: str) -> dict[str, Any]:
+    names = ("elastic_modulus", "torque", "warping", "decay_length", "effect")
+    largest = ("largest_twist", "largest_bimoment", "largest_normal_stress")
+    found: dict[str, Any] = {"case": case, **{name: getattr(one, name) for name in names}}
+    for name in largest:
+        value, place = getattr(one, name)
+        found[name] = {"value": value, "position": place}
+    return found
+
+
+def _sensitivity(result: JobResult) -> dict[str, Any]:
+    """Return what a step on each dimension does, and what moving each edge outward by 1 does."""
+    step, effects = result.job.sensitivity.step, result.sensitivity
+    dimensions = [_fields(effect) for effect in effects] if effects is not None else []
+    return {"step": step, "dimensions": dimensions, "edges": list(boundary_sensitivity(result.solution))}
 
 
 def _fields(item: Any) -> dict[str, Any]:
@@ -104,4 +137,6 @@ def csv_files(result: JobResult) -> dict[str, str]:
         found["cases.csv"] = csv_text(Table(columns, tuple(rows)))
     if result.margins is not None:
         found["margins.csv"] = csv_text(result.margins)
+    if result.sensitivity is not None:
+        found["sensitivity.csv"] = csv_text(result.sensitivity)
     return found

@@ -12,7 +12,9 @@ from torsionfe.output.section_view import sideways
 from torsionfe.output.sheet import GUTTER, WIDTH, Beside, Block, Cells, Facts, Lines, Picture, SheetSection
 from torsionfe.text import number, percent
 
-__all__ = ["constant", "ratio", "section_torque", "sensitivity", "stress", "warnings", "where"]
+__all__ = ["constant", "fitted", "ratio", "section_torque", "stress", "warnings", "where"]
+
+_TALL = 0.9  # height over width
 
 
 def where(job: Job, x: float, y: float) -> str:
@@ -36,6 +38,15 @@ def ratio(outline: Outline, width: float, *, around: float, beside: float, below
     x0, y0, x1, y1 = outline.bounds
     shape = (y1 - y0 + around * outline.size) / (x1 - x0 + around * outline.size)
     return min(1.1, (max(width - beside, 0.3 * width) * shape + below) / width)
+
+
+def fitted(outline: Outline, share: float, **room: float) -> tuple[float, float]:
+    """Return what share of the width a picture of a section gets, less for a tall one, and its height over width."""
+    for part in (share, 0.72 * share):
+        shape = ratio(outline, part * (WIDTH - GUTTER), **room)
+        if shape < _TALL:
+            break
+    return part, shape
 
 
 # --- torsion constant ---------------------------------------------------------------------------------------
@@ -65,8 +76,8 @@ def constant(result: JobResult) -> SheetSection:
         for step in solution.passes
     )
     caption = "The bounds of J and the error of the peak stress as the mesh was refined."
-    picture = Picture("convergence", caption, lambda canvas: _draw_convergence(canvas, result), 0.26)
-    return SheetSection("Torsion constant", (Beside((Facts(rows),), (Cells(head, passes),), 0.44), picture))
+    picture = Picture("convergence", caption, lambda canvas: _draw_convergence(canvas, result), 0.41)
+    return SheetSection("Torsion constant", (Beside((Facts(rows), Cells(head, passes)), (picture,), 0.44),))
 
 
 def _draw_convergence(canvas: Any, result: JobResult) -> None:
@@ -75,6 +86,9 @@ def _draw_convergence(canvas: Any, result: JobResult) -> None:
     drawn = plot_convergence(result.solution, canvas.subplots(1, 2), unit=result.job.system.length)
     drawn.axes[0].tick_params(labelbottom=True)  # side by side, each has its own numbers
     drawn.axes[0].set_xlabel(drawn.axes[1].get_xlabel())
+    for axes in drawn.axes:  # narrow
+        axes.set_title(axes.get_title(loc="left").split(";")[0], loc="left", fontsize="small")
+    drawn.axes[0].legend(loc="lower right", frameon=False, fontsize="x-small")
 
 
 # --- stress -------------------------------------------------------------------------------------------------
@@ -99,9 +113,8 @@ def stress(result: JobResult) -> SheetSection:
     solution = result.solution
     load = section_torque(result)
     under = f"under the torque of case {load[1]}, without factor" if load and load[0] else "per torque"
-    share, wide = 0.58, sideways(solution.outline)
-    room = {"beside": 0.65, "below": 1.55} if wide else {"beside": 1.35, "below": 0.85}
-    shape = ratio(solution.outline, share * (WIDTH - GUTTER), around=0.12, **room)
+    room = {"beside": 0.65, "below": 1.55} if sideways(solution.outline) else {"beside": 1.35, "below": 0.85}
+    share, shape = fitted(solution.outline, 0.58, around=0.12, **room)
     contour = Picture("contour", f"Shear stress {under}.", lambda canvas: _draw_contour(canvas, result), shape)
     zoom: list[Block] = []
     if solution.hot_spots:
@@ -172,8 +185,3 @@ def warnings(result: JobResult) -> SheetSection:
     if not lines:
         return SheetSection("Warnings", (Lines(("None: no sharp corners, no unrestored facets, tolerances met.",)),))
     return SheetSection("Warnings", (Lines(tuple(dict.fromkeys(lines)), "warning"),))
-
-
-def sensitivity(result: JobResult) -> SheetSection | None:
-    """Return what a change of the outline does, where that was computed."""
-    return None

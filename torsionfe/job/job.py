@@ -14,7 +14,20 @@ from torsionfe.member.bar import TorqueCase
 from torsionfe.member.margins import Allowables
 from torsionfe.quantities import UnitSystem
 
-__all__ = ["Heading", "Job", "JobBar", "Material", "Outputs", "Segment", "SheetChoice", "SweepPlan", "Tolerance"]
+__all__ = [
+    "Column",
+    "Hand",
+    "Heading",
+    "Job",
+    "JobBar",
+    "Material",
+    "Outputs",
+    "Segment",
+    "SensitivityPlan",
+    "SheetChoice",
+    "SweepPlan",
+    "Tolerance",
+]
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,7 +49,7 @@ class Material:
     Attributes
     ----------
     name, source : str
-    shear_modulus : float or None
+    shear_modulus, elastic_modulus : float or None
         force / length**2.
     allowables : Allowables or None
         Strengths of the material and allowed twist of the bar.
@@ -46,6 +59,7 @@ class Material:
     source: str = ""
     shear_modulus: float | None = None
     allowables: Allowables | None = None
+    elastic_modulus: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -70,10 +84,35 @@ class Segment:
 
 @dataclass(frozen=True, slots=True)
 class JobBar:
-    """The bar: its segments from station 0 on, and the stations that cannot rotate."""
+    """The bar: its segments from station 0 on, the stations that cannot rotate, and the ends that cannot warp.
+
+    Attributes
+    ----------
+    segments : tuple of Segment
+    held : tuple of int
+    warping_held : {'', 'near', 'both'}
+    """
 
     segments: tuple[Segment, ...]
     held: tuple[int, ...] = (0,)
+    warping_held: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Column:
+    """The bar under compression.
+
+    Attributes
+    ----------
+    length : float
+    length_factor : float
+    force : float or None
+        Compression to set against the buckling load.
+    """
+
+    length: float
+    length_factor: float = 1.0
+    force: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -93,6 +132,22 @@ class Hand:
     plates: str | tuple[Plate, ...] = "auto"
     idealisations: tuple[str, ...] = ("centreline",)
     rule: str = "series"
+
+
+@dataclass(frozen=True, slots=True)
+class SensitivityPlan:
+    """What to vary, and by how much.
+
+    Attributes
+    ----------
+    step : float
+        Length.
+    of : tuple of str
+        Dimensions of the trade shape; none for an outline that is no trade shape as stated.
+    """
+
+    step: float
+    of: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -147,7 +202,9 @@ class Job:
     material : Material
     cases : tuple of TorqueCase
     bar : JobBar or None
+    column : Column or None
     hand : Hand
+    sensitivity : SensitivityPlan
     tolerance : Tolerance
     sheet : SheetChoice
     outputs : Outputs
@@ -165,7 +222,9 @@ class Job:
     material: Material
     cases: tuple[TorqueCase, ...]
     bar: JobBar | None
+    column: Column | None
     hand: Hand
+    sensitivity: SensitivityPlan
     tolerance: Tolerance
     sheet: SheetChoice
     outputs: Outputs

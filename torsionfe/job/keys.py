@@ -63,7 +63,9 @@ _TABLES: dict[str, dict[str, str]] = {
         "material": "stiffness and strengths, with their source",
         "cases": "torques",
         "bar": "length, supports, segments and allowed twist",
+        "buckling": "the bar as a column: elastic torsional buckling",
         "compare": "the hand method to set beside the answer",
+        "sensitivity": "what a little more on each dimension does",
         "tolerance": "how sure the answer has to be",
         "sheet": "paper and sections of the sheet",
         "outputs": "which files to write",
@@ -94,6 +96,7 @@ _TABLES: dict[str, dict[str, str]] = {
         "name": "of the material",
         "source": "where its numbers come from; asked for as soon as there is one",
         "shear_modulus": "G",
+        "elastic_modulus": "E; needed where warping is held, and for buckling",
         "shear_yield": "yield strength in shear",
         "shear_ultimate": "ultimate strength in shear",
         "tensile_yield": "yield strength in tension, turned into shear by the criterion",
@@ -111,6 +114,7 @@ _TABLES: dict[str, dict[str, str]] = {
     "bar": {
         "length": "of the bar",
         "held": "stations that cannot rotate (0)",
+        "warping_held": "ends that cannot warp: 'near' (station 0) or 'both'; without it the bar warps freely",
         "segments": "bars in series, in place of one length",
         "allowed_twist": "largest rotation of any station",
         "allowed_twist_rate": "largest rotation per length",
@@ -121,12 +125,21 @@ _TABLES: dict[str, dict[str, str]] = {
         "shear_modulus": "of the segment, if not the material's",
         "outline": "of the segment, if not the job's",
     },
+    "buckling": {
+        "force": "compression to set against the buckling load",
+        "length": "of the column, if not the bar's",
+        "length_factor": "K: 1 with ends free to warp and kept from rotating, 0.5 with both held (1)",
+    },
     "compare": {
         "plates": "'shape' (as the trade shape states), 'derive' (from the outline), 'none', or a list of plates",
         "idealisations": "where plates end at a joint; the first one is drawn",
         "rule": "where the coefficients come from: 'series', 'table', 'thin' or 'third' (series)",
     },
     "compare.plates": {"width": "b", "thickness": "t", "name": "of the plate"},
+    "sensitivity": {
+        "step": "how much more (a power of ten near a thousandth of the section's size)",
+        "of": "dimensions of the trade shape to vary (every length that the job states)",
+    },
     "tolerance": {
         "torsion_constant": "width of the bracket of J over J (0.001)",
         "peak_stress": "relative error of the peak stress (0.002)",

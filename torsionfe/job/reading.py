@@ -16,20 +16,21 @@ from torsionfe.closed_form.idealise import IDEALISATIONS
 from torsionfe.closed_form.plates import Plate
 from torsionfe.closed_form.rectangle import RULES
 from torsionfe.errors import JobError
-from torsionfe.job.job import Hand, Heading, Job, JobBar, Material, Outputs, Segment, SheetChoice, SweepPlan, Tolerance
-from torsionfe.job.keys import KEYS, SHEET_SECTIONS, SWEEP_MAPS, shape_keys
+from torsionfe.job.job import Column, Hand, Heading, Job, JobBar, Material, Outputs, Segment, SheetChoice, Tolerance
+from torsionfe.job.keys import KEYS, SHEET_SECTIONS
 from torsionfe.job.lines import key_lines
 from torsionfe.job.places import MOST_BYTES, InputFile, read_bytes
 from torsionfe.job.section import JobSection, read_section
 from torsionfe.job.table import Source, Table
+from torsionfe.job.varying import read_sensitivity, read_sweep
 from torsionfe.member.bar import TorqueCase
 from torsionfe.member.margins import CRITERIA, Allowables
+from torsionfe.member.restrained import ENDS
 from torsionfe.quantities import UnitSystem
 
 __all__ = ["read_job"]
 
 _PLATES = ("auto", "shape", "derive", "none")
-_MOST_VALUES = 10_000
 
 
 def read_job(path: str | os.PathLike[str]) -> Job:
@@ -76,11 +77,13 @@ def read_job(path: str | os.PathLike[str]) -> Job:
         material=material,
         cases=cases,
         bar=bar,
+        column=_column(top, material, bar),
         hand=_hand(top, section),
+        sensitivity=read_sensitivity(top, section),
         tolerance=_tolerance(top),
         sheet=_sheet(top),
         outputs=_outputs(top),
-        sweep=_sweep(top, section),
+        sweep=read_sweep(top, section),
         stated=tuple(source.stated),
         files=_files(file, data, section, bar),
     )
@@ -147,16 +150,19 @@ def _material(top: Table, bar: Table | None) -> Material:
         twist, rate = bar.quantity("allowed_twist", "angle"), bar.quantity("allowed_twist_rate", "twist rate")
     if table is None:
         return Material(allowables=_allowables(None, twist, rate, bar))
-    modulus = table.quantity("shear_modulus", "stress")
-    if modulus is not None and not modulus > 0.0:
-        raise table.error("shear_modulus", f"{table.name('shear_modulus')} must be greater than 0, got {modulus:g}")
+    shear, elastic = (table.quantity(key, "stress") for key in ("shear_modulus", "elastic_modulus"))
+    for key, modulus in (("shear_modulus", shear), ("elastic_modulus", elastic)):
+        if modulus is not None and not modulus > 0.0:
+            raise table.error(key, f"{table.name(key)} must be greater than 0, got {modulus:g}")
+    if shear is not None and elastic is not None and elastic <= shear:
+        raise table.error("elastic_modulus", "elastic_modulus is not above shear_modulus: are they exchanged?")
     numbers = [key for key in table.data if key not in ("name", "source", "criterion")]
     if numbers and not table.text("source", longest=500).strip():
         raise table.error(
             "", "[material] needs 'source': name the standard, data sheet or test that its numbers come from"
         )
     allowables = _allowables(table, twist, rate, bar)
-    return Material(table.text("name"), table.text("source", longest=500), modulus, allowables)
+    return Material(table.text("name"), table.text("source", longest=500), shear, allowables, elastic)
 
 
 def _allowables(table: Table | None, twist: float | None, rate: float | None, bar: Table | None) -> Allowables | None:
@@ -223,18 +229,47 @@ def _bar(table: Table, material: Material) -> JobBar:
             raise table.error("held", f"bar.held: there is no station {station}, only 0 to {len(segments)}")
     if held is not None and not held:
         raise table.error("held", "bar.held is empty: at least one station must be kept from rotating")
-    return JobBar(segments, (0,) if held is None else held)
+    return JobBar(segments, (0,) if held is None else held, _warping_held(table, material, segments, held))
+
+
+def _warping_held(table: Table, material: Material, segments: tuple[Segment, ...], held: tuple[int, ...] | None) -> str:
+    """Return the ends that cannot warp; the theory here is of one prismatic bar, turned at its far end."""
+    if "warping_held" not in table:
+        return ""
+    ends = table.choice("warping_held", ENDS[1:])
+    if len(segments) > 1 or held not in (None, (0,)):
+        raise table.error("warping_held", "bar.warping_held needs one bar of one length that is held at station 0 only")
+    if material.elastic_modulus is None:
+        raise table.error("warping_held", "bar.warping_held needs elastic_modulus in [material]")
+    return ends
+
+
+def _column(top: Table, material: Material, bar: JobBar | None) -> Column | None:
+    table = top.table("buckling", list(KEYS["buckling"]))
+    if table is None:
+        return None
+    if material.elastic_modulus is None or material.shear_modulus is None:
+        raise table.error("", "[buckling] needs elastic_modulus and shear_modulus in [material]")
+    several = bar is not None and len(bar.segments) > 1
+    if "length" not in table and (bar is None or several):
+        raise table.error("", "[buckling] needs 'length': there is no [bar] of one length to take it from")
+    length = _above_zero(table, "length") if "length" in table else bar.segments[0].length  # type: ignore[union-attr]
+    force = _above_zero(table, "force", "force") if "force" in table else None
+    factor = table.number("length_factor", 1.0)
+    if factor <= 0.0:
+        raise table.error("length_factor", f"buckling.length_factor must be greater than 0, got {factor:g}")
+    return Column(length, factor, force)
 
 
 def _segment(row: Table, k: int, material: Material) -> Segment:
     row.need("length")
-    own = _above_zero(row, "shear_modulus") if "shear_modulus" in row else _modulus(row, material)
+    own = _above_zero(row, "shear_modulus", "stress") if "shear_modulus" in row else _modulus(row, material)
     section = read_section(row) if "outline" in row else None
     return Segment(row.text("name", str(k)), _above_zero(row, "length"), own, section)
 
 
-def _above_zero(table: Table, key: str) -> float:
-    value = table.needed(key, "stress" if key == "shear_modulus" else "length")
+def _above_zero(table: Table, key: str, kind: str = "length") -> float:
+    value = table.needed(key, kind)
     if value <= 0.0:
         raise table.error(key, f"{table.name(key)} must be greater than 0, got {table.data[key]!r}")
     return value
@@ -303,69 +338,6 @@ def _outputs(top: Table) -> Outputs:
     usual = Outputs()
     flags = {key: table.flag(key, getattr(usual, key)) for key in ("html", "pdf", "json", "csv", "fields")}
     return Outputs(**flags, figures=table.choices("figures", ("svg", "pdf", "png"), usual.figures))
-
-
-# --- sweep --------------------------------------------------------------------------------------------------
-
-
-def _sweep(top: Table, section: JobSection) -> SweepPlan | None:
-    table = top.table("sweep", list(KEYS["sweep"]))
-    if table is None:
-        return None
-    table.need("grid")
-    if not section.shape:
-        raise table.error("", "[sweep] varies the dimensions of a trade shape: set outline.shape")
-    if "fillets" in top.data["outline"]:
-        raise table.error("", "[sweep] can't vary a shape with outline.fillets: use the shape's own radii")
-    kinds = shape_keys(section.shape)
-    allowed = [key for key, (kind, _) in kinds.items() if kind != "voids"]
-    grid = table.table("grid", allowed)
-    if grid is None or not grid.data:
-        raise table.error("grid", f"sweep.grid is empty: name a dimension, one of {', '.join(allowed)}")
-    values = {key: _values(grid, key, kinds[key][0]) for key in grid.data}
-    total = 1
-    for column in values.values():
-        total *= len(column)
-    if total > 1_000_000:
-        raise table.error("grid", f"sweep.grid has {total} sections; 1000000 at most")
-    return SweepPlan(values, table.choices("maps", SWEEP_MAPS, SWEEP_MAPS[:4]))
-
-
-def _values(grid: Table, key: str, kind: str) -> tuple[float, ...]:
-    given = grid.data[key]
-    measured = "length" if kind == "length" else "number"
-    if isinstance(given, list):
-        if not 1 <= len(given) <= _MOST_VALUES:
-            raise grid.error(key, f"{grid.name(key)} must have 1 to {_MOST_VALUES} values, got {len(given)}")
-        found = [_value(grid, (key, k), item, measured) for k, item in enumerate(given)]
-        if len(set(found)) < len(found):
-            raise grid.error(key, f"{grid.name(key)} has a value twice")
-        return tuple(found)
-    table = grid.table(key, list(KEYS["sweep.grid.*"]))
-    assert table is not None
-    table.need("from", "to", "count")
-    if kind == "whole":
-        raise grid.error(key, f"{grid.name(key)} counts something: list its values, [2, 3, 4]")
-    first, last = (_value(table, (end,), table.data[end], measured) for end in ("from", "to"))
-    count = table.whole("count", 2, 2, _MOST_VALUES)
-    ratio = table.choice("spacing", ("even", "ratio"), "even") == "ratio"
-    if first == last or (ratio and min(first, last) <= 0.0):
-        raise table.error("to", f"{table.name()}: 'from' and 'to' must differ, and be above 0 for spacing = 'ratio'")
-    steps = [k / (count - 1) for k in range(count)]
-    if ratio:
-        found = [first * (last / first) ** step for step in steps]
-    else:
-        found = [(1.0 - step) * first + step * last for step in steps]
-    return tuple(float(f"{value:.12g}") for value in found)  # 8, not 7.999999999999999
-
-
-def _value(table: Table, path: tuple[str | int, ...], given: Any, kind: str) -> float:
-    if kind == "length":
-        return table.measure(path, given, kind)
-    if isinstance(given, bool) or not isinstance(given, (int, float)):
-        name = table.name(str(path[0]))
-        raise table.source.error((*table.path, *path), f"{name} must be plain numbers, got {given!r:.60}")
-    return float(given)
 
 
 # --- what belongs together ----------------------------------------------------------------------------------

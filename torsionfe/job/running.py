@@ -5,13 +5,18 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
+from torsionfe.errors import InputError
 from torsionfe.job.by_hand import compared
 from torsionfe.job.job import Job, Tolerance
 from torsionfe.member.bar import Bar, BarResponse, SteppedBar
+from torsionfe.member.buckling import TorsionalBuckling, torsional_buckling
 from torsionfe.member.margins import MarginTable, margins
 from torsionfe.member.plastic import PlasticTorque, plastic_torque
+from torsionfe.member.restrained import RestrainedBar, restrain
+from torsionfe.outline import shapes
 from torsionfe.outline.outline import Outline
 from torsionfe.study.compare import Comparison
+from torsionfe.study.dimension import Sensitivity, sensitivity
 from torsionfe.torsion.solution import TorsionSolution
 from torsionfe.torsion.solve import solve_torsion
 
@@ -40,6 +45,12 @@ class JobResult:
         Where a yield strength in shear is known.
     hand : Comparison or None
         The hand method beside the answer, by each idealisation; the first one is drawn. None where the job wants none.
+    restrained : tuple of RestrainedBar
+        One a case, where an end cannot warp.
+    buckling : TorsionalBuckling or None
+        Where the bar is a column, too.
+    sensitivity : Sensitivity or None
+        Where the sheet shows it and the section is a trade shape as stated.
     """
 
     job: Job
@@ -49,6 +60,9 @@ class JobResult:
     margins: MarginTable | None
     plastic: PlasticTorque | None
     hand: Comparison | None
+    restrained: tuple[RestrainedBar, ...] = ()
+    buckling: TorsionalBuckling | None = None
+    sensitivity: Sensitivity | None = None
 
     @property
     def solutions(self) -> tuple[TorsionSolution, ...]:
@@ -93,7 +107,41 @@ def run_job(job: Job, progress: Progress | None = None) -> JobResult:
         say("fully plastic torque")
         plastic = plastic_torque(job.section.outline, allowables.shear_yield, solution)
     say("hand method")
-    return JobResult(job, solution, bar, responses, found, plastic, compared(job, solution))
+    hand = compared(job, solution)
+    restrained, buckling = _restrained(job, bar), _buckling(job, solution)
+    effects = _sensitivity(job, solution, say)
+    return JobResult(job, solution, bar, responses, found, plastic, hand, restrained, buckling, effects)
+
+
+def _restrained(job: Job, bar: SteppedBar | None) -> tuple[RestrainedBar, ...]:
+    modulus = job.material.elastic_modulus
+    if bar is None or job.bar is None or not job.bar.warping_held or modulus is None:
+        return ()
+    only = bar.segments[0]
+    torques = [float(case.at_stations(2)[1]) for case in job.cases]
+    return tuple(restrain(only, modulus, torque, warping=job.bar.warping_held) for torque in torques)
+
+
+def _buckling(job: Job, solution: TorsionSolution) -> TorsionalBuckling | None:
+    column, elastic, shear = job.column, job.material.elastic_modulus, job.material.shear_modulus
+    if column is None or elastic is None or shear is None:
+        return None
+    try:
+        return torsional_buckling(Bar(solution, column.length, shear), elastic, column.length_factor)
+    except InputError as error:
+        raise InputError(f"[buckling]: {error}; leave the table out") from None
+
+
+def _sensitivity(job: Job, solution: TorsionSolution, say: Progress) -> Sensitivity | None:
+    plan, section = job.sensitivity, job.section
+    if "sensitivity" not in job.sheet.sections or not plan.of:
+        return None
+    say("sensitivity")
+    sizes = dict(section.dimensions or {})
+    try:
+        return sensitivity(getattr(shapes, section.shape), sizes, plan.step, of=plan.of, solution=solution)
+    except InputError:  # none of them can be varied: the sheet shows the edges
+        return None
 
 
 def _solved(

@@ -5,10 +5,10 @@ from __future__ import annotations
 import os
 from pathlib import Path
 
-from torsionfe.cautions import cautions
+from torsionfe.cautions import MARGINS, cautions
 from torsionfe.errors import InputError
 from torsionfe.job.content import sheet_of, verdict
-from torsionfe.job.data import csv_files, result_document
+from torsionfe.job.data import cautions_of, csv_files, result_document
 from torsionfe.job.findings import section_torque
 from torsionfe.job.running import JobResult, Progress
 from torsionfe.output.fields import write_fields
@@ -43,6 +43,7 @@ def result_words(result: JobResult) -> str:
     title = " ".join(result.job.heading.title.split())
     lines = [title, "=" * min(len(title), 78), *verdict(result)]
     lines += ["", str(result.margins)] if result.margins is not None else [cautions()]
+    lines += [f"caution: {line}" for line in cautions_of(result) if line not in MARGINS]
     return printable("\n".join(lines))
 
 
