@@ -51,12 +51,15 @@ class Peak:
         Relative disagreement of the samples around each peak.
     side : ndarray of shape (k,)
         Row of the boundary stress's sides that holds each.
+    size : ndarray of shape (k,)
+        Length of that side.
     """
 
     tau: Floats
     points: Floats
     doubt: Floats
     side: Ints
+    size: Floats
 
 
 def find_peaks(stress: BoundaryStress) -> Peak:
@@ -64,14 +67,14 @@ def find_peaks(stress: BoundaryStress) -> Peak:
     size = np.abs(stress.tau)
     height = np.where(_near_corner(stress)[:, None], 0.0, size).max(axis=1)
     if height.max(initial=0.0) == 0.0:
-        return Peak(np.empty(0), np.empty((0, 2)), np.empty(0), np.empty(0, dtype=np.int64))
+        return Peak(np.empty(0), np.empty((0, 2)), np.empty(0), np.empty(0, dtype=np.int64), np.empty(0))
     top = _summits(stress, height)
     tau, place, scatter = _fitted(stress, size, top)
     edge = stress.edge[top]
     points = stress.mesh.edges.points(edge, np.clip(place / stress.mesh.edges.length[edge], 0.0, 1.0))
     doubt = np.maximum(scatter, 0.5 * np.abs(tau - height[top])) / tau
     order = np.argsort(-tau, kind="stable")
-    return Peak(tau[order], points[order], doubt[order], top[order])
+    return Peak(tau[order], points[order], doubt[order], top[order], stress.length[top[order]])
 
 
 def heights(stress: BoundaryStress, sides: Ints) -> Floats:

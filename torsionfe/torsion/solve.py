@@ -12,7 +12,7 @@ from torsionfe.outline.outline import Outline
 from torsionfe.torsion.adaptive import around_peaks, refined
 from torsionfe.torsion.bounds import Bounds
 from torsionfe.torsion.frame import Frame
-from torsionfe.torsion.look import Look, look_at
+from torsionfe.torsion.look import Look, Seen, look_at
 from torsionfe.torsion.solution import Pass, TorsionSolution
 
 __all__ = ["solve_torsion"]
@@ -80,7 +80,7 @@ def solve_torsion(
         if mesh.unknowns(order) > max_unknowns:
             shortfall += f" within {max_unknowns} unknowns"
             break
-        before = look.peak
+        before = Seen(look.peak, look.rel_error)
         del look  # the coarser fields are let go before the finer ones are made
         look = look_at(mesh, order, before)
     return TorsionSolution.of(outline, frame, look, tuple(trail), shortfall)
@@ -121,9 +121,9 @@ def _forced(look: Look, wanted: float) -> Ints:
     open_ = look.rel_error > wanted
     if not open_.any():
         return np.zeros(len(look.fields.space.mesh.triangles), dtype=np.int64)
-    # the error of the samples falls about as h**(p + 1), h as 2**(-rounds / 2)
+    # the error of the samples falls about as h**(p + 1), and two rounds halve every side
     ratio = np.minimum(look.rel_error[open_], 1.0) / wanted
-    rounds = np.clip(np.ceil(2.0 * np.log2(ratio) / (look.fields.space.order + 1)), 2, 4).astype(np.int64)
+    rounds = 2 * np.clip(np.ceil(np.log2(ratio) / (look.fields.space.order + 1)), 1, 2).astype(np.int64)
     return around_peaks(look.boundary, look.peak.side[open_], rounds)
 
 
