@@ -111,10 +111,14 @@ def test_equal_peaks_that_part_are_told_for_both_ways():
 # --- against solving again ----------------------------------------------------------------------------------
 
 
-@pytest.mark.parametrize("name", TRADE)
+#: What is solved again, larger and smaller: all of two shapes, the hardest of two more.
+SOLVED_AGAIN = {"angle": ANGLE, "keyed_shaft": KEYED, "box": ("outer_radius",), "tee": ("web_thickness",)}
+
+
+@pytest.mark.parametrize("name", SOLVED_AGAIN)
 def test_torsion_constant_against_solving_again(name):
     build, sizes = getattr(shapes, name), TRADE[name]
-    for effect in effects(name):
+    for effect in map(effects(name).__getitem__, SOLVED_AGAIN[name]):
         h = 5e-3 * effect.value
         ends = [build(**{**sizes, effect.name: effect.value + way * h}) for way in (1, -1)]
         ahead, back = (solve_torsion(end, 1e-5, 4, peak_tol=math.inf).torsion_constant.value for end in ends)
@@ -145,13 +149,14 @@ def test_a_fillets_radius_is_that_of_its_edge():
 def test_moving_one_edge_against_solving_again():
     corners = np.array([(0.0, 0.0), (60.0, 0.0), (60.0, 12.0), (14.0, 12.0), (14.0, 50.0), (0.0, 50.0)])
     found = boundary_sensitivity(solve_torsion(Outline(corners)))
-    for k, edge in enumerate(found):
+    for k in (1, 2, 4):
+        edge = found.edges[k]
         out = found.normals[found.edge == k][0]
         ends = []
         for way in (0.02, -0.02):
             moved = corners.copy()
             moved[[k, (k + 1) % 6]] += way * out
-            ends.append(solve_torsion(Outline(moved), 1e-5, 3, peak_tol=math.inf).torsion_constant.value)
+            ends.append(solve_torsion(Outline(moved), 2e-5, 4, peak_tol=math.inf).torsion_constant.value)
         slope = (ends[0] - ends[1]) / 0.04
         assert edge.by_offset == pytest.approx(slope, rel=0.012)
         assert abs(edge.by_offset - slope) <= edge.rel_error * slope + 2e-3 * slope

@@ -30,7 +30,7 @@ __all__ = ["SensitivityPlot", "plot_sensitivity"]
 _PARTS = 6  # pieces of a side
 _THIN, _THICK = 1.0, 8.5  # points
 _NAME = "gain of J / area added"
-_MOST, _NEAR = 0.98, 1.6  # share of the boundary within the scale, and how far above it the hot spot may end it
+_MOST, _NEAR = 0.95, 2.0  # share of the boundary within the scale, and how far above it the hot spot may end it
 _BAR: Any = {"aspect": 30, "fraction": 0.08, "pad": 0.03, "extendfrac": 0.04}
 
 
@@ -68,7 +68,7 @@ def plot_sensitivity(
 
     The gain for each area added is ``tau^2`` for ``G theta' = 1`` (length**2; Hadamard's formula), so that the hot
     spot is also where material counts most. The scale ends there, or, where only small fillets or sharp corners (whose
-    gain has no bound) come near that, at what 2 % of the boundary exceed; the legend says so.
+    gain has no bound) come near that, at what 5 % of the boundary exceed; the legend says so.
 
     Parameters
     ----------
