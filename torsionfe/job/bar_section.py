@@ -160,7 +160,7 @@ def _column(result: JobResult) -> Block | None:
     parts = [measured(part, system.force, 4) for part in (found.load, found.shear_part, found.warping_part)]
     rows = [
         ("as a column of length K L", measured(found.effective_length, system.length)),
-        ("elastic torsional buckling", "{}: {} by G J, {} by E C_w".format(*parts)),
+        ("elastic torsional buckling", "{}: {} from J, {} from C_w".format(*parts)),
         ("stress at that load", f"{measured(found.stress, system.stress, 4)}; no meaning above the yield stress"),
         ("elastic flexural buckling", f"{measured(found.flexural_load, system.force, 4)}, about the weak axis"),
         ("buckles first by", "twisting" if found.torsion_governs else "bending"),

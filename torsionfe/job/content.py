@@ -256,8 +256,8 @@ def _again(job: Job) -> SheetSection:
     files = tuple((file.name, file.sha256) for file in job.files)
     rows = (("program", f"torsionfe {__version__}"), ("digest of the inputs", job.digest))
     how = (
-        "Same files, version and libraries give this sheet again to the last byte (torsionfe run). Digests: SHA-256; "
-        "that of the inputs is taken over the lines 'digest, two spaces, name'."
+        "Same files, version and libraries: same bytes (torsionfe run). Digests: SHA-256; that of the inputs over the "
+        "lines 'digest, two spaces, name'."
     )
     return SheetSection(
         "To make this sheet again", (Facts(rows), Cells(("input file", "SHA-256"), files, words=2), Lines((how,)))

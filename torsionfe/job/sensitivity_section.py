@@ -18,7 +18,7 @@ from torsionfe.torsion.sensitivity import BoundarySensitivity, EdgeSensitivity, 
 __all__ = ["sensitivity_section"]
 
 _SHARE = 0.38  # of the width: the picture
-_TALLEST = 0.75  # height over width of the picture
+_TALLEST = 0.7  # height over width of the picture
 _MOST = 8  # edges
 
 
