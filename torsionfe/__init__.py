@@ -58,17 +58,21 @@ if TYPE_CHECKING:
     from torsionfe.output.plate_plot import plot_plates
     from torsionfe.output.range_plot import plot_range
     from torsionfe.output.result_json import to_json, write_json
+    from torsionfe.output.sensitivity_plot import plot_sensitivity
     from torsionfe.output.sweep_map import plot_map
     from torsionfe.output.tables import csv_text, markdown_text, write_csv, write_markdown
     from torsionfe.output.warping_plot import plot_warping, plot_warping_surface
     from torsionfe.output.zoom import plot_hot_spot
     from torsionfe.study.compare import Comparison, compare
+    from torsionfe.study.dimension import Sensitivity, sensitivity
     from torsionfe.study.hand import HandMethod
     from torsionfe.study.journal import read_journal
     from torsionfe.study.range import HandRange, hand_method_range
     from torsionfe.study.size import SizeResult, bar_margin, size
     from torsionfe.study.sweep import SweepInterrupted, sweep
     from torsionfe.study.sweep_table import SweepTable
+    from torsionfe.torsion.corners import CornerStress
+    from torsionfe.torsion.sensitivity import BoundarySensitivity, boundary_sensitivity
 
 __version__ = "0.1.0"
 
@@ -105,17 +109,21 @@ _LATER = {
     "output.plate_plot": ("plot_plates",),
     "output.range_plot": ("plot_range",),
     "output.result_json": ("to_json", "write_json"),
+    "output.sensitivity_plot": ("plot_sensitivity",),
     "output.sweep_map": ("plot_map",),
     "output.tables": ("csv_text", "markdown_text", "write_csv", "write_markdown"),
     "output.warping_plot": ("plot_warping", "plot_warping_surface"),
     "output.zoom": ("plot_hot_spot",),
     "study.compare": ("Comparison", "compare"),
+    "study.dimension": ("Sensitivity", "sensitivity"),
     "study.hand": ("HandMethod",),
     "study.journal": ("read_journal",),
     "study.range": ("HandRange", "hand_method_range"),
     "study.size": ("SizeResult", "bar_margin", "size"),
     "study.sweep": ("SweepInterrupted", "sweep"),
     "study.sweep_table": ("SweepTable",),
+    "torsion.corners": ("CornerStress",),
+    "torsion.sensitivity": ("BoundarySensitivity", "boundary_sensitivity"),
 }
 _HOME = {name: module for module, names in _LATER.items() for name in names}
 
