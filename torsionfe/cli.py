@@ -6,6 +6,7 @@ Exit status: 0 done, 2 bad input, 1 anything else.
 from __future__ import annotations
 
 import argparse
+import os
 import sys
 import time
 from collections.abc import Sequence
@@ -300,12 +301,17 @@ def _sweep(given: argparse.Namespace) -> None:
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run the command; return its exit status."""
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure") and stream.errors == "strict":
+            stream.reconfigure(errors="backslashreplace")  # an ASCII terminal has no raised digits
     try:
         given = _parser().parse_args(arguments)
     except SystemExit as stop:  # argparse has spoken: 2 for bad usage, 0 for help
         return int(stop.code or 0)
     try:
         given.act(given)
+        if sys.stdout is not None:
+            sys.stdout.flush()  # a full disk is told of here, not by the interpreter as it ends
     except InputError as error:
         _complain(error)
         return _BAD_INPUT
@@ -315,7 +321,14 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except KeyboardInterrupt as stop:
         _complain(str(stop) or "interrupted")
         return _FAILED
-    except BrokenPipeError:
-        sys.stderr.close()
-        return _FAILED
+    except OSError as error:
+        return _unprintable(error)
     return _DONE
+
+
+def _unprintable(error: OSError) -> int:
+    """Say, where somebody still listens, that the results can't be printed, so that the interpreter says nothing."""
+    if not isinstance(error, BrokenPipeError):
+        _complain(f"the results can't be printed: {error.strerror or error}")
+    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    return _FAILED
