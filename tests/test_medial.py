@@ -319,6 +319,7 @@ def test_plates_are_drawn_dashed_and_labelled(figure):
 def test_stated_plates_are_drawn_where_they_are_found(figure):
     from torsionfe.output.plate_plot import plot_plates
 
+    figure.set_size_inches(9.0, 12.0)
     shape = shapes.wide_flange(200, 100, 10, 6, 12)
     drawing = plot_plates(shape, shape.plates("web_through"), figure.add_subplot())
     assert drawing.unplaced == ()
@@ -327,7 +328,38 @@ def test_stated_plates_are_drawn_where_they_are_found(figure):
     assert all(label.get_position()[1] > 90.0 for label in tops)
     stranger = plot_plates(shape, [Plate(33.0, 5.0, "rib")], figure.add_subplot())
     assert stranger.unplaced == (0,)
-    assert "no place found for plate 0 (rib)" in stranger.axes.get_title()
+    assert "no place found for plate 0 (rib)" in stranger.axes.get_title(loc="left")
+
+
+@pytest.mark.parametrize("idealisation", ["centreline", "straight_through", "web_through"])
+def test_equal_plates_that_cross_keep_their_names(figure, idealisation):
+    from torsionfe.output.plate_plot import plot_plates
+
+    figure.set_size_inches(7.0, 7.0)
+    cross = shapes.cross(80, 80, 8)
+    drawing = plot_plates(cross, cross.plates(idealisation), figure.add_subplot())
+    assert drawing.unplaced == ()
+    for line, label in zip(drawing.centre_lines, drawing.labels, strict=True):
+        wide, high = np.ptp(line.get_xydata(), axis=0)
+        assert (wide > high) == ("level" in label.get_text()), label.get_text()
+        assert (label.get_rotation() == 0.0) == (wide > high)
+        middle = line.get_xydata().mean(axis=0)
+        for word, side in (("top", middle[1]), ("bottom", -middle[1]), ("right", middle[0]), ("left", -middle[0])):
+            assert word not in label.get_text().split() or side > 10.0
+
+
+def test_labels_of_plates_keep_clear_of_each_other_in_small_figures(figure):
+    from torsionfe.output.plate_plot import plot_plates
+
+    figure.set_size_inches(2.6, 2.4)
+    shape = shapes.wide_flange(100, 100, 10, 6, root_radius=8)
+    drawing = plot_plates(shape, shape.plates("web_through"), figure.add_subplot(), unit="mm")
+    figure.canvas.draw()
+    boxes = [label.get_window_extent() for label in drawing.labels]
+    assert len(boxes) == 5
+    assert not any(a.overlaps(b) for k, a in enumerate(boxes) for b in boxes[:k])
+    assert any("flange" not in label.get_text() for label in drawing.labels)  # where no room is for the name
+    assert "\n" in drawing.axes.get_title(loc="left")
 
 
 def test_cells_and_unplated_regions_are_drawn_too(figure):

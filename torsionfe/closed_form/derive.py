@@ -129,7 +129,9 @@ def _divided(groups: list[tuple[Strip, list[Strip]]], idealisation: str) -> list
         return []
     web = idealisation == "web_through"
     joined = [k for k, (_, parts) in enumerate(groups) if len(parts) > 1]
-    joined.sort(key=lambda k: groups[k][0].length * groups[k][0].thickness, reverse=not web)
+    joined.sort(key=lambda k: groups[k][0].length * groups[k][0].thickness, reverse=True)
+    if web:
+        joined.reverse()  # not sorted anew: of two alike, the other one is parted
     lines = {k: LineString(groups[k][0].line) for k in joined}
     parted: list[int] = []
     for index, k in enumerate(joined):

@@ -66,11 +66,7 @@ def _errors(result: JobResult, found: Comparison) -> Block:
     lines = ["Conservative for stiffness: the twist is not understated; for strength: the peak stress is not."]
     if len(found.solution.singular_corners):
         lines.append("* Beside sharp re-entrant corners, where the elastic stress is unbounded.")
-    reasons: dict[str, list[str]] = {}
-    for row in found.methods:
-        words = f"J: {row.constant_reason}. Peak: {row.stress_reason}."
-        reasons.setdefault(words, []).append(row.method.name.replace("_", " "))
-    lines += [f"{', '.join(names)}: {words}" for words, names in reasons.items()]
+    lines += [f"{reason[0].upper()}{reason[1:]}." for reason in found.reasons]
     return Beside((picture,), (Lines(tuple(lines)),), 0.56)
 
 
@@ -109,11 +105,7 @@ def _draw_plates(canvas: Any, result: JobResult, first: PlateSet | None) -> None
     assert first is not None  # a job's methods are all placed
     named = tuple(replace(plate, name=plain(legible(plate.name))) for plate in first.plates)
     plates = replace(first, plates=named)
-    drawn = plot_plates(result.solution.outline, plates, canvas.add_subplot(), result.job.system.length)
-    for text in drawn.labels:
-        text.set_fontsize("medium")
-    for side in ("left", "center"):
-        drawn.axes.set_title(drawn.axes.get_title(side), loc=side, fontsize="medium")
+    plot_plates(result.solution.outline, plates, canvas.add_subplot(), result.job.system.length)
 
 
 def hand_references(result: JobResult) -> list[str]:

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
+import shapely
 from shapely.geometry.polygon import orient
 
 from torsionfe.checks import Floats
@@ -15,7 +16,8 @@ from torsionfe.closed_form.derived import DerivedPlates
 from torsionfe.closed_form.plates import Plate
 from torsionfe.errors import InputError
 from torsionfe.outline.outline import Outline
-from torsionfe.output.style import ACCENTS, HATCH, INK, MATERIAL, QUIET, label_axes, look, new_axes
+from torsionfe.output.section_view import points_per_length
+from torsionfe.output.style import ACCENTS, HATCH, INK, MATERIAL, QUIET, frame_section, look, new_axes
 from torsionfe.text import number, percent
 
 if TYPE_CHECKING:
@@ -24,6 +26,8 @@ if TYPE_CHECKING:
     from matplotlib.patches import PathPatch
     from matplotlib.text import Text
     from shapely import Polygon
+
+    Label = tuple[str, Floats, float, Polygon]
 
 __all__ = ["PlateDrawing", "plot_plates"]
 
@@ -37,6 +41,9 @@ _SIDES = {
 #: Names that speak of a direction: that of the plate's middle line.
 _ALONG = {"level": 0, "upright": 1}
 _SAME = 0.02  # of a size: plates given by hand are drawn where derived ones are as nearly as large
+_THROUGH = ("straight_through", "web_through")  # which plate runs through: of equal ones, either
+_CROWDED = 0.06  # of a label: where more of it is hidden, it is broken in two lines, then left without a name
+_SHARES = (0.5, 0.65, 0.35, 0.8, 0.2)  # along a plate, where its label may stand
 
 
 @dataclass(frozen=True)
@@ -55,7 +62,7 @@ class PlateDrawing:
     regions : tuple of matplotlib.patches.PathPatch
         What no plate stands for, hatched; none as long as a plate has no place.
     labels : tuple of matplotlib.text.Text
-        ``b x t`` of each plate that has a place.
+        Name and ``b x t`` of each plate that has a place; the size alone where there is no room.
     unplaced : tuple of int
         Plates whose place in the outline is not known; the title names them.
     """
@@ -116,12 +123,9 @@ def plot_plates(
     lines = [axes.plot(*line.T, color=_PLATE, ls="-.", lw=0.8)[0] for line in drawn]
     closed = [np.append(line, line[:1], axis=0) for line in placed.cell_lines]
     lines += [axes.plot(*line.T, color=_CELL, ls=":", lw=1.6)[0] for line in closed]
-    labels = tuple(
-        _label(axes, outline, plate, line)
-        for plate, line in zip(placed.plates, placed.centre_lines, strict=True)
-        if line is not None
-    )
-    _finish(axes, outline, placed, unplaced, unit)
+    with look():
+        _frame(axes, outline, placed, unplaced, unit)
+        labels = _labels(axes, outline, placed)
     return PlateDrawing(axes, section, rectangles, tuple(lines), regions, labels, unplaced)
 
 
@@ -137,16 +141,30 @@ def _patch(polygon: Polygon, **style: object) -> PathPatch:
 
 def _placed(outline: Outline, given: list[Plate], plates: Iterable[Plate]) -> DerivedPlates:
     """Return the plates on the middle lines of derived plates of the same size, None where there is none."""
-    name = getattr(plates, "idealisation", "")
-    found = derive_plates(outline, name if name in DERIVED else "centreline")
-    free = list(range(len(found.plates)))
-    lines: list[Floats | None] = []
-    for plate in given:
-        fits = [k for k in free if _alike(plate, found.plates[k])]
-        fits.sort(key=lambda k: -_towards(plate.name, found.centre_lines[k], outline))
-        lines.append(found.centre_lines[fits[0]] if fits else None)
-        free = [k for k in free if k not in fits[:1]]
-    return replace(found, plates=tuple(given), idealisation=name, centre_lines=tuple(lines), joints=())
+    stated = getattr(plates, "idealisation", "")
+    names = (stated, *_THROUGH) if stated in _THROUGH else (stated,) if stated in DERIVED else DERIVED
+    choices = [_assigned(outline, given, derive_plates(outline, name)) for name in dict.fromkeys(names)]
+    found, lines, _ = max(choices, key=lambda choice: choice[2])
+    return replace(found, plates=tuple(given), idealisation=stated, centre_lines=lines, joints=())
+
+
+def _assigned(
+    outline: Outline, given: list[Plate], found: DerivedPlates
+) -> tuple[DerivedPlates, tuple[Floats | None, ...], float]:
+    """Return the middle line of each plate, as many as can be and each where its name says, and how well that went."""
+    from scipy.optimize import linear_sum_assignment
+
+    least = 4.0 * (len(given) + 1)  # one more plate in place outweighs all names
+    score = np.zeros((len(given), len(found.plates)))
+    for i, plate in enumerate(given):
+        for k, other in enumerate(found.plates):
+            if _alike(plate, other):
+                score[i, k] = least + _towards(plate.name, found.centre_lines[k], outline) / outline.size
+    rows, columns = linear_sum_assignment(score, maximize=True)
+    lines: list[Floats | None] = [None] * len(given)
+    for i, k in zip(rows.tolist(), columns.tolist(), strict=True):
+        lines[i] = found.centre_lines[k] if score[i, k] > 0.0 else None
+    return found, tuple(lines), float(score[rows, columns].sum())
 
 
 def _alike(a: Plate, b: Plate) -> bool:
@@ -162,36 +180,89 @@ def _towards(name: str, line: Floats | None, outline: Outline) -> float:
     return float(aside + sum(np.ptp(line[:, _ALONG[word]]) for word in name.split() if word in _ALONG))
 
 
-def _label(axes: Axes, outline: Outline, plate: Plate, line: Floats) -> Text:
-    """Write ``b x t`` beside the middle of the plate, on the side away from the section's centroid."""
+# --- labels -----------------------------------------------------------------------------------------------
+
+
+def _labels(axes: Axes, outline: Outline, placed: DerivedPlates) -> tuple[Text, ...]:
+    """Write each plate's label beside it, where it hides the least."""
+    ground = [outline.polygon(1e-3 * outline.size)]
+    (x0, x1), (y0, y1) = axes.get_xlim(), axes.get_ylim()
+    frame = shapely.box(x0, y0, x1, y1)
+    drawn: list[Text] = []
+    for plate, line in zip(placed.plates, placed.centre_lines, strict=True):
+        if line is None:
+            continue
+        text, (x, y), angle, covered = _best(_choices(axes, outline, plate, line), ground, frame)
+        ground.append(covered)
+        style: dict[str, Any] = {"ha": "center", "va": "center", "fontsize": "small"}
+        drawn.append(axes.text(x, y, text, rotation=angle, rotation_mode="anchor", **style))
+    return tuple(drawn)
+
+
+def _choices(axes: Axes, outline: Outline, plate: Plate, line: Floats) -> Iterator[list[Label]]:
+    """Yield the labels that a plate may have, from the most telling to the shortest."""
+    size = f"{number(plate.width)} × {number(plate.thickness)}"
+    for words in (f"{plate.name}: {size}", f"{plate.name}\n{size}", size) if plate.name else (size,):
+        yield list(_places(axes, outline, plate, line, words))
+
+
+def _best(choices: Iterable[list[Label]], ground: list[Polygon], frame: Polygon) -> Label:
+    """Return the first label that hides next to nothing where it stands best, else the one that hides the least."""
+    found: list[tuple[float, Label]] = []
+    for labels in choices:
+        costs = [_hidden(label[3], ground, frame) + 0.01 * k for k, label in enumerate(labels)]
+        k = int(np.argmin(costs))
+        found.append((costs[k], labels[k]))
+        if costs[k] < _CROWDED + 0.01 * k:
+            return labels[k]
+    return min(found, key=lambda pair: pair[0])[1]
+
+
+def _places(axes: Axes, outline: Outline, plate: Plate, line: Floats, words: str) -> Iterator[Label]:
+    """Yield where a label may stand beside a plate, with what it covers: outside of the section first."""
+    from matplotlib.font_manager import FontProperties
+
+    size = FontProperties(size="small").get_size_in_points() / points_per_length(axes)
+    rows = words.split("\n")
+    half = size * np.array([0.31 * max(map(len, rows)), 0.6 * len(rows)])
+    for share in _SHARES:
+        middle, along = _along(line, share)
+        normal = np.array([-along[1], along[0]])
+        if normal @ (middle - np.array(outline.centroid)) < 0.0:
+            normal = -normal
+        angle = (np.degrees(np.arctan2(along[1], along[0])) + 90.0 - 1e-6) % 180.0 - 90.0 + 1e-6
+        for side in (normal, -normal):
+            at = middle + side * (0.5 * plate.thickness + half[1] + 0.25 * size)
+            steps = [half[0] * along * i + half[1] * normal * j for i, j in ((-1, -1), (1, -1), (1, 1), (-1, 1))]
+            yield words, at, round(float(angle), 3), shapely.Polygon(at + np.array(steps))
+
+
+def _along(line: Floats, share: float) -> tuple[Floats, Floats]:
+    """Return the point at a share of a line's length, and the unit direction there."""
     steps = np.hypot(*np.diff(line, axis=0).T)
-    k = int(np.searchsorted(np.cumsum(steps), 0.5 * steps.sum()))
-    share = (0.5 * steps.sum() - steps[:k].sum()) / steps[k]
-    middle = line[k] + share * (line[k + 1] - line[k])
+    walked = share * steps.sum()
+    k = min(int(np.searchsorted(np.cumsum(steps), walked)), len(steps) - 1)
     along = (line[k + 1] - line[k]) / steps[k]
-    normal = np.array([-along[1], along[0]])
-    if normal @ (middle - np.array(outline.centroid)) < 0.0:
-        normal = -normal
-    place = middle + normal * (0.5 * plate.thickness + 0.035 * outline.size)
-    angle = (np.degrees(np.arctan2(along[1], along[0])) + 90.0) % 180.0 - 90.0
-    name = f"{plate.name}: " if plate.name else ""
-    text = f"{name}{number(plate.width)} × {number(plate.thickness)}"
-    x, y = place
-    return axes.text(x, y, text, rotation=angle, rotation_mode="anchor", ha="center", va="center", fontsize=9)
+    return line[k] + along * (walked - steps[:k].sum()), along
 
 
-def _finish(
-    axes: Axes, outline: Outline, placed: DerivedPlates, unplaced: tuple[int, ...], unit: str
-) -> None:
-    x0, y0, x1, y1 = outline.bounds
-    room = 0.1 * outline.size
-    axes.set_xlim(x0 - room, x1 + room)
-    axes.set_ylim(y0 - room, y1 + room)
-    axes.set_aspect("equal")
-    label_axes(axes, unit)
-    title = f"Plates: {placed.idealisation.replace('_', ' ') or 'given by hand'}"
+def _hidden(label: Polygon, ground: list[Polygon], frame: Polygon) -> float:
+    """Return the share of a label that lies on the section, on other labels or outside the frame, weighed."""
+    section, *others = (label.intersection(piece).area for piece in ground)
+    outside = label.area - label.intersection(frame).area
+    return float((section + 2.0 * sum(others) + 2.0 * outside) / label.area)
+
+
+def _frame(axes: Axes, outline: Outline, placed: DerivedPlates, unplaced: tuple[int, ...], unit: str) -> None:
+    frame_section(axes, outline, unit, room=0.1)
+    room = 18.0 / (points_per_length(axes) * outline.size)  # for a line of text on every side
+    if room > 0.1:
+        frame_section(axes, outline, unit, room=min(room, 0.3))
+    parts = [f"Plates: {placed.idealisation.replace('_', ' ') or 'given by hand'}"]
     if unplaced:
-        title += f"\nno place found for {', '.join(placed.plates[k].label(k) for k in unplaced)}"
+        parts.append(f"no place found for {', '.join(placed.plates[k].label(k) for k in unplaced)}")
     else:
-        title += f", {percent(placed.covered, 3)} of the area"
-    axes.set_title(title, fontsize=10)
+        parts.append(f"{percent(placed.covered, 3)} of the area")
+    wide = axes.get_window_extent().width * 72.0 / axes.figure.dpi
+    broken = unplaced or 5.0 * len(", ".join(parts)) > wide
+    axes.set_title(("\n" if broken else ", ").join(parts))
