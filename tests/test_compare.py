@@ -1,8 +1,7 @@
-"""The hand method beside the answer: errors, sides, reasons, figure; and over ranges of dimensions."""
+"""The hand method beside the answer: errors, sides, reasons, words, figure."""
 
 import math
 
-import numpy as np
 import pytest
 
 import torsionfe as tf
@@ -10,11 +9,9 @@ from torsionfe.errors import InputError
 from torsionfe.outline import shapes
 from torsionfe.outline.fillets import unfilleted
 from torsionfe.output.compare_plot import draw_errors, plot_comparison
-from torsionfe.output.range_plot import plot_range
 from torsionfe.output.tables import csv_text, markdown_text
 from torsionfe.study.compare import compare
 from torsionfe.study.hand import hand_methods
-from torsionfe.study.range import OUTSIDE, UNDECIDED, UNKNOWN, WITHIN, HandRange, hand_method_range
 
 LEVER = shapes.angle(62.0, 46.0, 13.0, root_radius=7.0, toe_radius=4.0)
 
@@ -60,7 +57,7 @@ def test_bredt_approaches_the_exact_tube_as_the_wall_thins():
     errors = []
     for wall in (4.0, 2.0, 1.0):
         tube = shapes.tube(50.0, wall)
-        row = only(compare(tf.solve_torsion(tube, rel_tol=1e-5)))
+        row = only(compare(tf.solve_torsion(tube, rel_tol=1e-4)))
         mean = 25.0 - wall / 2.0
         errors.append(row.constant_error)
         assert row.constant_error == pytest.approx(-((wall / (2.0 * mean)) ** 2), rel=0.05)
@@ -103,6 +100,26 @@ def test_sides_are_judged_by_the_ends_of_what_is_not_known():
     assert found == {"below": "conservative", "inside": "within the bounds", "above": "not conservative"}
 
 
+def test_a_peak_within_its_error_is_undecided():
+    bar = shapes.rectangle(30.0, 20.0)
+    solution = tf.solve_torsion(bar, rel_tol=2e-2, peak_tol=5e-2)
+    spot, exact = solution.hot_spot, tf.plate_sum(bar.plates())
+    sides = {"conservative": 1.0 + 1.5 * spot.rel_error, "not conservative": 1.0 - 1.5 * spot.rel_error}
+    for share in (0.9, -0.9):
+        sides |= {"within the bounds": 1.0 + share * spot.rel_error}
+        for verdict, ratio in sides.items():
+            # a strip of thickness t has the stress t / J = 3 / (b t^2)
+            width = 3.0 / (ratio * spot.stress_per_torque) * 1e4
+            row = only(compare(solution, [tf.Plate(width, 0.01)]))
+            assert row.strength == verdict, (verdict, row.stress_error, spot.rel_error)
+    assert 1.0 / exact.section_modulus == pytest.approx(spot.stress_per_torque, rel=spot.rel_error)
+
+
+def test_what_did_not_converge_is_told():
+    rough = tf.solve_torsion(LEVER, rel_tol=1e-9, max_unknowns=400)
+    assert "NOT CONVERGED" in str(compare(rough))
+
+
 # --- reasons -----------------------------------------------------------------------------------------------
 
 
@@ -112,6 +129,11 @@ def test_reasons_name_corner_cell_joint_and_cover():
     assert all(math.isnan(row.stress_error) for row in sharp.methods)
     assert sharp.methods[0].stress_reason == "sharp re-entrant corner at (8, 8): unbounded, fillet it"
     assert sharp.methods[0].constant_reason.startswith("joints stiffer than the plates that meet there (-4.")
+    same, double, strip, peak = sharp.reasons  # methods with one reason are told together
+    assert same.startswith("J by centreline, straight through, web through: joints stiffer")
+    assert double.startswith("J by full depth: joints counted for more than they carry (+")
+    assert strip.startswith("J by developed: no rectangle: bends and ends that a strip has not (-")
+    assert peak == f"peak: {sharp.methods[0].stress_reason}"
     box = tf.solve_torsion(shapes.box(70.0, 40.0, 5.0, outer_radius=8.0, inner_radius=3.0), rel_tol=5e-3)
     assert "closed cell" in only(compare(box, [tf.Plate(220.0, 5.0)])).constant_reason
     assert only(compare(box)).method.name == "thin cells"
@@ -150,6 +172,8 @@ def test_everything_that_describes_plates_is_taken(lever):
     [
         ({"torque": math.nan}, "torque"),
         ({"shear_modulus": 0.0}, "shear_modulus"),
+        ({"torque": True}, "torque"),
+        ({"torque": "450"}, "torque"),
         ({"length": -1.0}, "length"),
         ({"plates": []}, "empty"),
         ({"plates": {}}, "empty mapping"),
@@ -178,6 +202,8 @@ def test_it_prints_writes_and_shows_itself(lever):
     text = str(comparison)
     assert "conservative" in text
     assert "twist, rad" in text
+    assert "J for stress" in text
+    assert "J for stress" not in str(compare(lever, shapes.tube(50, 5).thin_cells()))  # Bredt has one J
     assert "J by hand" not in repr(comparison)
     rows = csv_text(comparison).splitlines()
     assert rows[0].startswith("method,J for twist,J for stress,error of J,stiffness,peak stress")
@@ -206,86 +232,14 @@ def test_the_figure_shows_every_method_and_its_side(lever):
     assert "no finite peak" in plot_comparison(sharp).axes[2].get_title(loc="left")
     from matplotlib.figure import Figure
 
+    exact = tf.solve_torsion(shapes.rectangle(30.0, 20.0), rel_tol=2e-2)
+    words = [text.get_text() for text in plot_comparison(compare(exact)).axes[1].figure.legends[0].get_texts()]
+    assert words == ["within the bounds", "not known closer"]
+
     brief = draw_errors(comparison, tuple(Figure().subplots(1, 2)), brief=True)
     assert brief[0].values[0].get_text() == "−18 %"
     with pytest.raises(InputError, match="Comparison is needed"):
         plot_comparison(lever)
-
-
-# --- over a range ------------------------------------------------------------------------------------------
-
-
-def judged(low, high):
-    low, high = np.array([low]), np.array([high])
-    return HandRange(None, low, high, low, high, ("",)).verdicts(0.05)[0]
-
-
-def test_verdicts_hold_for_every_value_between_the_ends():
-    assert judged(-0.049, 0.049) == WITHIN
-    assert judged(0.051, 0.06) == OUTSIDE
-    assert judged(-0.2, -0.051) == OUTSIDE
-    assert judged(0.04, 0.06) == UNDECIDED
-    assert judged(-0.06, 0.01) == UNDECIDED
-    assert judged(math.nan, math.nan) == UNKNOWN
-
-
-def test_a_range_carries_bounds_errors_and_gaps():
-    found = hand_method_range(
-        shapes.angle,
-        {"leg_x": 80.0, "leg_y": 80.0, "thickness": [4.0, 8.0, 90.0], "root_radius": [0.0, 8.0]},
-        workers=0,
-        progress=False,
-        rel_tol=5e-3,
-        peak_tol=2e-2,
-    )
-    assert len(found) == 6
-    assert (found.constant_low[:4] < found.constant_high[:4]).all()
-    assert np.isnan(found.constant_low[4:]).all()
-    assert np.isnan(found.stress_low[[0, 2]]).all()  # sharp corners have no peak
-    plain = only(compare(tf.solve_torsion(shapes.angle(80, 80, 8, 8)), shapes.angle(80, 80, 8, 8).plates()))
-    assert found.constant_low[3] <= plain.constant_error <= found.constant_high[3]
-    assert found.stress_low[3] <= plain.stress_error <= found.stress_high[3]
-    assert found.verdicts(0.05)[3] == OUTSIDE
-    assert "no answer" in str(found)
-    names, rows = found.as_table()
-    assert len(rows) == 6
-    assert len(names) == len(rows[0])
-    drawn = plot_range(found, unit="mm")
-    assert drawn.axes.get_xlabel() == "thickness [mm]"
-    assert len(drawn.labels) == 4
-    assert any(text.get_text() == "no answer" for text in drawn.axes.get_legend().get_texts())
-    with pytest.raises(InputError, match="limits"):
-        plot_range(found, limits=(0.1, 0.05))
-
-
-def test_one_dimension_is_a_curve_within_its_bounds():
-    found = hand_method_range(
-        lambda thickness: shapes.tube(50.0, thickness), {"thickness": np.linspace(1.0, 6.0, 4)}, workers=0
-    )
-    exact = [-((t / (50.0 - t)) ** 2) / (1.0 + (t / (50.0 - t)) ** 2) for t in np.linspace(1.0, 6.0, 4)]
-    assert (found.constant_low <= exact).all()  # Bredt against pi/2 (R^4 - r^4)
-    assert (exact <= found.constant_high).all()
-    drawn = found.plot()
-    assert len(drawn.lines) == 2
-    assert drawn.lines[0].get_ydata()[0] == pytest.approx(100.0 * exact[0], abs=0.05)
-    with pytest.raises(InputError, match="judged"):
-        plot_range(found, judged="twist")
-
-
-def test_other_idealisations_and_own_functions():
-    grid = {"leg_x": 80.0, "leg_y": 80.0, "thickness": [8.0], "root_radius": 8.0}
-    options = {"workers": 0, "progress": False, "rel_tol": 1e-2, "peak_tol": 0.1}
-    full = hand_method_range(shapes.angle, grid, hand="full_depth", **options)
-    assert full.names == ("full_depth",)
-    own = hand_method_range(shapes.angle, grid, hand=lambda **size: [tf.Plate(152.0, size["thickness"])], **options)
-    assert own.names == ("given by hand",)
-    assert own.constant_low[0] < full.constant_low[0]
-    none = hand_method_range(shapes.angle, grid, hand="no such", **options)
-    assert none.names == ("",)
-    with pytest.raises(InputError, match="grid"):
-        hand_method_range(shapes.angle, {})
-    with pytest.raises(InputError, match="hand must be"):
-        hand_method_range(shapes.angle, grid, hand=3)
 
 
 def test_methods_of_an_outline_that_nobody_described():

@@ -95,35 +95,53 @@ class Comparison:
             rows.append((*sizes, *stress, self.twist(by.torsion_constant), row.constant_reason, row.stress_reason))
         return (*columns, "error of the peak", "strength", "twist", "reason for J", "reason for the peak"), rows
 
+    @property
+    def reasons(self) -> tuple[str, ...]:
+        """Why the methods are off, a line a reason, methods with the same one together."""
+        found: dict[tuple[str, str], list[str]] = {}
+        for row in self.methods:
+            for what, why in (("J", row.constant_reason), ("peak", row.stress_reason)):
+                found.setdefault((what, why), []).append(row.method.name.replace("_", " "))
+        lines = []
+        for (what, why), names in sorted(found.items(), key=lambda item: item[0][0] != "J"):
+            by = "" if len(names) == len(self.methods) else f" by {', '.join(names)}"
+            lines.append(f"{what}{by}: {why}")
+        return tuple(lines)
+
+    @property
+    def twofold(self) -> bool:
+        """Whether a method has a torsion constant for stress other than that for twist."""
+        pairs = [(row.method.torsion_constant, row.method.torsion_constant_stress) for row in self.methods]
+        return any(not math.isclose(twist, stress, rel_tol=1e-6) for twist, stress in pairs)
+
     def _rows(self) -> list[list[str]]:
         solution, factor = self.solution, 1.0 if self.torque is None else abs(self.torque)
         spot, bounds = solution.hot_spot, solution.torsion_constant
         twisted = math.isfinite(self.twist(1.0))
-        head = ["method", "J", "off", "for stiffness", "peak / torque" if self.torque is None else "peak stress"]
-        head += ["off", "for strength", *(["twist, rad"] if twisted else [])]
         stress = "none finite"
         if spot is not None:
             mark = " *" if len(solution.singular_corners) else ""
             stress = f"{number(factor * spot.stress_per_torque)} +/- {percent(spot.rel_error)}{mark}"
-        first = ["finite elements", str(bounds), "", "", stress, "", ""]
-        rows = [head, first + ([number(self.twist(bounds.value))] if twisted else [])]
+        head = ["method", "J", "off", "for stiffness", "J for stress"]
+        head += ["peak / torque" if self.torque is None else "peak stress", "off", "for strength", "twist, rad"]
+        rows = [head, ["finite elements", str(bounds), "", "", "", stress, "", "", number(self.twist(bounds.value))]]
         for row in self.methods:
             by = row.method
             off = "" if math.isnan(row.stress_error) else signed_percent(row.stress_error)
             cells = [by.name.replace("_", " "), number(by.torsion_constant, 6), signed_percent(row.constant_error)]
-            cells += [row.stiffness, number(factor * by.stress_per_torque), off, row.strength]
-            rows.append(cells + ([number(self.twist(by.torsion_constant))] if twisted else []))
-        return rows
+            cells += [row.stiffness, number(by.torsion_constant_stress, 6), number(factor * by.stress_per_torque)]
+            rows.append([*cells, off, row.strength, number(self.twist(by.torsion_constant))])
+        left_out = {place for place, shown in ((4, self.twofold), (8, twisted)) if not shown}
+        return [[cell for k, cell in enumerate(row) if k not in left_out] for row in rows]
 
     def _lines(self) -> list[str]:
-        lines = ["conservative: for stiffness, the twist is not understated; for strength, the peak stress is not"]
+        lines = ["conservative: for stiffness, J is not overstated, so the twist is not understated;"]
+        lines.append("for strength, the peak stress is not understated; within the bounds: undecided")
         if len(self.solution.singular_corners):
             lines.append("* beside sharp re-entrant corners, where the elastic stress has no limit")
-        seen: dict[str, list[str]] = {}
-        for row in self.methods:
-            why = f"J: {row.constant_reason}; peak: {row.stress_reason}"
-            seen.setdefault(why, []).append(row.method.name.replace("_", " "))
-        lines += [f"why, {', '.join(names)}: {why}" for why, names in seen.items()]
+        if self.solution.shortfall:
+            lines.append(f"NOT CONVERGED: {self.solution.shortfall}")
+        lines += [f"why, {reason}" for reason in self.reasons]
         return lines + [f"note: {note}" for note in dict.fromkeys(n for row in self.methods for n in row.method.notes)]
 
     def __str__(self) -> str:

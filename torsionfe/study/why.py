@@ -21,6 +21,7 @@ __all__ = ["Section", "constant_reason", "stress_reason"]
 
 _AGREES = 0.005
 _COVERED = 0.9  # of the area: below, plates hardly stand for the section
+_STUBBY = 3.0  # width to thickness
 _SAMPLES = 129
 
 
@@ -63,7 +64,7 @@ def constant_reason(section: Section, method: HandMethod) -> str:
     j = solution.torsion_constant.value
     error = method.torsion_constant / j - 1.0
     if abs(error) <= max(_AGREES, solution.torsion_constant.rel_gap):
-        return "agrees with the answer"
+        return _agreement(error, solution.torsion_constant.rel_gap)
     if not isinstance(answer, CellSum) and solution.outline.voids:
         return "closed cell: plates are open and leave out the shear flow around it"
     fillets = section.fillet_share
@@ -81,14 +82,19 @@ def constant_reason(section: Section, method: HandMethod) -> str:
     return " and ".join(told[:2]) if told else "fillets, joints and coefficients nearly cancel"
 
 
+def _agreement(error: float, doubt: float) -> str:
+    return "agrees with the answer" if abs(error) <= doubt else f"agrees within {percent(_AGREES)}"
+
+
 def _joint(section: Section, method: HandMethod, share: float) -> str:
     """Return what is left when fillets and coefficients are accounted for: the shape that plates don't have."""
     plates = method.plates
     if isinstance(plates, DerivedPlates) and plates.covered < _COVERED:
         return f"plates stand for only {percent(plates.covered)} of the section ({signed_percent(share)})"
+    stubby = min((plate.ratio for plate in plates or ()), default=math.inf) < _STUBBY
     if plates is not None and len(plates) == 1:
-        return f"stubby section, no rectangle ({signed_percent(share)})"
-    stubby = min((plate.ratio for plate in plates or ()), default=math.inf) < 3.0
+        what = "stubby section, no rectangle" if stubby else "no rectangle: bends and ends that a strip has not"
+        return f"{what} ({signed_percent(share)})"
     what = "joints of stubby plates" if stubby else "joints"
     if share < 0.0:
         return f"{what} stiffer than the plates that meet there ({signed_percent(share)})"
@@ -106,7 +112,7 @@ def stress_reason(section: Section, method: HandMethod, error: float) -> str:
     if solution.hot_spot is None or math.isnan(error):
         return "no finite peak"
     if abs(error) <= max(_AGREES, solution.hot_spot.rel_error):
-        return "agrees with the answer"
+        return _agreement(error, solution.hot_spot.rel_error)
     if math.isfinite(section.hot_fillet):
         return f"hot spot in a fillet of radius {number(section.hot_fillet)}, a rise that plates and walls have not"
     return _flat_face(section, method, error)
