@@ -11,12 +11,13 @@ import numpy as np
 from torsionfe.checks import Floats
 from torsionfe.errors import InputError
 from torsionfe.output.style import ACCENTS, HATCH, INK, PAPER, QUIET, axis_label, look, new_axes, plain
-from torsionfe.study.range import JUDGED, OUTSIDE, UNKNOWN, WITHIN, HandRange
+from torsionfe.study.range import JUDGED, UNDECIDED, UNKNOWN, WITHIN, HandRange
 from torsionfe.text import number, percent, signed_percent
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.collections import FillBetweenPolyCollection, QuadMesh
+    from matplotlib.contour import ContourSet
     from matplotlib.lines import Line2D
     from matplotlib.text import Text
 
@@ -24,8 +25,11 @@ __all__ = ["RangePlot", "plot_range"]
 
 _LIMITS = (0.05, 0.10)
 _LABELLED = 160  # cells: more have no room for their numbers
-#: Fill of a cell by how many limits it keeps: none, the wider one, both. Lightness falls with the error.
-_BANDS = ("#b5563f", "#e8c48d", "#eef1ec")
+#: Fill of a cell by the limit that its error surely keeps: neither or the wider one by hand too low, the narrower
+#: one, the wider one or neither by hand too high. In grey they differ, too: lightness (CIELAB) 53, 83, 95, 68, 27.
+_BANDS = ("#3f8a8c", "#b4d6d2", "#eef1ec", "#d9976f", "#7d1f12")
+_DASHES: tuple[Any, Any] = ("--", "-")
+_SIDES = ("too low", "too high")
 _NAMES = {"torsion_constant": "J by hand", "peak_stress": "peak stress by hand"}
 
 
@@ -43,7 +47,9 @@ class RangePlot:
     cells : matplotlib.collections.QuadMesh or None
         Over two dimensions, a cell a section, by the limits that it keeps.
     labels : tuple of matplotlib.text.Text
-        The error in each cell.
+        The error in each cell, or a question mark where a limit is undecided.
+    limits : tuple of matplotlib.contour.ContourSet
+        Over two dimensions, where the error comes to the narrower and to the wider limit.
     """
 
     axes: Axes
@@ -51,6 +57,7 @@ class RangePlot:
     bands: tuple[FillBetweenPolyCollection, ...] = ()
     cells: QuadMesh | None = None
     labels: tuple[Text, ...] = ()
+    limits: tuple[ContourSet, ...] = ()
 
 
 def plot_range(
@@ -64,8 +71,10 @@ def plot_range(
     """Draw the hand method's error over the dimensions that vary, and the limits of 5 and 10 %.
 
     Over one dimension: curves of the error, with the width that the bounds leave. Over two: a cell a section, pale
-    where the error is within the narrower limit, dark where it is beyond the wider one, hatched where there is no
-    answer; the error in percent is written in, with a question mark where the bounds leave a limit undecided.
+    where the error is within the narrower limit, dark where it is beyond the wider one, in one colour where the hand
+    method is too low and in another where it is too high, hatched where there is no answer. The error in percent is
+    written in where there is room, with a question mark where the bounds leave a limit undecided; lines run where
+    the error, between the sections, comes to a limit.
 
     Parameters
     ----------
@@ -152,46 +161,72 @@ def _cells(
     ax: Axes, found: HandRange, places: list[Floats], judged: str, limits: tuple[float, float]
 ) -> RangePlot:
     from matplotlib.colors import BoundaryNorm, ListedColormap
+    from matplotlib.patheffects import withStroke
 
     columns, i = np.unique(places[0], return_inverse=True)
     rows, j = np.unique(places[1], return_inverse=True)
     low, high = found.error(judged)
+    middle = 0.5 * (low + high)
     kept = [found.verdicts(limit, judged) for limit in limits]
     # by what is sure: a cell counts as keeping a limit only where it does for every value between the bounds
-    level = np.where(kept[0] == WITHIN, 2, np.where(kept[1] == WITHIN, 1, 0))
-    grid = np.full((len(rows), len(columns)), np.nan)
-    grid[j, i] = np.where(kept[0] == UNKNOWN, np.nan, level)
+    level = np.where(kept[0] == WITHIN, 0, np.where(kept[1] == WITHIN, 1, 2))
+    grid, errors = np.full((2, len(rows), len(columns)), np.nan)
+    grid[j, i] = np.where(kept[0] == UNKNOWN, np.nan, 2 + np.sign(middle) * level)
+    errors[j, i] = middle
     ax.set_facecolor("none")
     ax.patch.set(hatch=HATCH, edgecolor=QUIET)
+    norm = BoundaryNorm(np.arange(-0.5, 5.0), 5)
     colours = ListedColormap(list(_BANDS))
-    norm = BoundaryNorm([-0.5, 0.5, 1.5, 2.5], 3)
     cells = ax.pcolormesh(np.ma.masked_invalid(grid), cmap=colours, norm=norm, edgecolors=PAPER, linewidth=0.6)
     for axis, ticks in ((ax.xaxis, columns), (ax.yaxis, rows)):
         shown = np.unique(np.linspace(0, len(ticks) - 1, min(len(ticks), 12)).round().astype(int))
         axis.set_ticks(shown + 0.5, [number(float(ticks[k])) for k in shown])
+    doubtful = (kept[0] == UNDECIDED) | (kept[1] == UNDECIDED)
     labels = []
-    if grid.size <= _LABELLED:
-        for k in np.flatnonzero(np.isfinite(low)):
-            middle = 0.5 * float(low[k] + high[k])
-            sure = all(str(names[k]) in (WITHIN, OUTSIDE) for names in kept)
-            text = signed_percent(middle).removesuffix(" %") + ("" if sure else "?")
-            colour = PAPER if level[k] == 0 else INK
-            style: dict[str, Any] = {"ha": "center", "va": "center", "fontsize": "x-small", "color": colour}
-            labels.append(ax.text(i[k] + 0.5, j[k] + 0.5, text.replace("-", "−"), **style))
-    _explain(ax, limits, judged, bool(np.isnan(grid).any()))
-    return RangePlot(ax, cells=cells, labels=tuple(labels))
+    for k in np.flatnonzero(np.isfinite(middle) & (doubtful | (grid.size <= _LABELLED))):
+        text = signed_percent(float(middle[k])).removesuffix(" %").replace("-", "−") if grid.size <= _LABELLED else ""
+        rim = [withStroke(linewidth=2.0, foreground=_BANDS[int(grid[j[k], i[k]])])]
+        style: dict[str, Any] = {"ha": "center", "va": "center", "fontsize": "x-small", "path_effects": rim}
+        colour = PAPER if level[k] == 2 else INK
+        labels.append(ax.text(i[k] + 0.5, j[k] + 0.5, text + "?" * bool(doubtful[k]), color=colour, **style))
+    lines = _limit_lines(ax, errors, limits)
+    _explain(ax, grid, limits, judged, bool(doubtful.any()))
+    return RangePlot(ax, cells=cells, labels=tuple(labels), limits=lines)
 
 
-def _explain(ax: Axes, limits: tuple[float, float], judged: str, gaps: bool) -> None:
+def _limit_lines(ax: Axes, errors: Floats, limits: tuple[float, float]) -> tuple[ContourSet, ...]:
+    """Draw where the error, taken as linear between the sections, comes to the limits: the wider one in full."""
+    known = np.ma.masked_invalid(errors)
+    if min(errors.shape) < 2:
+        return ()
+    x, y = (np.arange(size) + 0.5 for size in reversed(errors.shape))
+    lines = []
+    for limit, style in zip(limits, _DASHES, strict=True):
+        if known.min() < limit < known.max() or known.min() < -limit < known.max():
+            options: dict[str, Any] = {"colors": [INK], "linewidths": 1.1, "linestyles": style}
+            lines.append(ax.contour(x, y, known, levels=[-limit, limit], **options))
+    return tuple(lines)
+
+
+def _explain(ax: Axes, grid: Floats, limits: tuple[float, float], judged: str, doubtful: bool) -> None:
+    """Say above the map what the colours mean that are in it."""
+    from matplotlib.lines import Line2D
     from matplotlib.patches import Patch
 
     narrow, wide = (percent(limit) for limit in limits)
-    words = (f"beyond {wide}", f"within {wide}", f"within {narrow}")
-    keys = [
-        Patch(facecolor=colour, edgecolor=QUIET, linewidth=0.6, label=text)
-        for colour, text in zip(reversed(_BANDS), reversed(words), strict=True)
+    low, high = _SIDES
+    words = [f"{low} by more than {wide}", f"{low}, within {wide}", f"within {narrow}"]
+    words += [f"{high}, within {wide}", f"{high} by more than {wide}"]
+    keys: list[Any] = [
+        Patch(facecolor=_BANDS[k], edgecolor=QUIET, linewidth=0.6, label=words[k])
+        for k in np.unique(grid[np.isfinite(grid)]).astype(int)
     ]
-    if gaps:
+    if np.isnan(grid).any():
         keys.append(Patch(facecolor="none", edgecolor=QUIET, linewidth=0.6, hatch=HATCH, label="no answer"))
-    ax.set_title(plain(f"error of {_NAMES[judged]} [%]"), fontsize="medium", pad=24.0)
-    ax.legend(handles=keys, loc="lower left", bbox_to_anchor=(0.0, 1.0), ncols=4, borderaxespad=0.2, fontsize="small")
+    if doubtful:
+        keys.append(Line2D([], [], linestyle="none", marker="$?$", color=INK, label="limit undecided"))
+    for limit, style in zip(limits, _DASHES, strict=True):
+        keys.append(Line2D([], [], color=INK, linewidth=1.1, linestyle=style, label=f"at {percent(limit)}"))
+    ax.set_title(plain(f"error of {_NAMES[judged]} [%]"), fontsize="medium", pad=10.0 + 14.0 * -(-len(keys) // 3))
+    shape: dict[str, Any] = {"loc": "lower left", "bbox_to_anchor": (0.0, 1.0), "borderaxespad": 0.2}
+    ax.legend(handles=keys, ncols=3, fontsize="small", **shape)

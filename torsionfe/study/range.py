@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
@@ -11,8 +11,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from torsionfe.checks import Floats, one_of, positive
+from torsionfe.closed_form.derive import derive_plates
+from torsionfe.closed_form.idealise import IDEALISATIONS
+from torsionfe.closed_form.plates import PlateSet
 from torsionfe.errors import InputError, TorsionError
 from torsionfe.outline.outline import Outline
+from torsionfe.outline.shapes import TradeShape
 from torsionfe.study.grid import combinations
 from torsionfe.study.hand import HandMethod, hand_methods
 from torsionfe.study.sweep import sweep
@@ -28,6 +32,7 @@ __all__ = ["JUDGED", "OUTSIDE", "UNDECIDED", "UNKNOWN", "WITHIN", "HandRange", "
 JUDGED = ("torsion_constant", "peak_stress")
 WITHIN, OUTSIDE, UNDECIDED, UNKNOWN = "within", "outside", "undecided", "no answer"
 _SHOWN = 12
+_FAILED = 5
 
 
 @dataclass(frozen=True, eq=False, repr=False)
@@ -44,6 +49,8 @@ class HandRange:
         The same for the peak stress, from the hot spot's error; NaN where no finite peak exists.
     names : tuple of str
         The hand method's name in each section, empty where it has no answer.
+    errors : tuple of str
+        Why a section has no answer, solved or by hand; empty where it has both.
     """
 
     table: SweepTable
@@ -52,6 +59,7 @@ class HandRange:
     stress_low: Floats
     stress_high: Floats
     names: tuple[str, ...]
+    errors: tuple[str, ...]
 
     def error(self, judged: str = "torsion_constant") -> tuple[Floats, Floats]:
         """Return the ends of the error of ``J`` or of the peak stress, each of shape (n,)."""
@@ -89,15 +97,21 @@ class HandRange:
             errors = [_interval(low[k], high[k]) for low, high in map(self.error, JUDGED)]
             rows.append([*values, self.names[k], *errors, str(self.table["status"][k])])
         more = [f"... and {len(self) - _SHOWN} more sections"] if len(self) > _SHOWN else []
+        failed = [k for k, words in enumerate(self.errors) if words]
+        more += [f"row {k}: {self.errors[k]}" for k in failed[:_FAILED]]
+        if len(failed) > _FAILED:
+            more.append(f"... and {len(failed) - _FAILED} more without an answer: see .errors")
+        if (self.table["singular_corners"].astype(float) > 0.0).any():
+            more.append("no error of the peak beside sharp re-entrant corners: the stress is unbounded there")
         head = table(summary, "The hand method over a range of dimensions", head=True)
         return "\n".join([head, "", table(rows, head=True), *more])
 
     def as_table(self) -> tuple[tuple[str, ...], list[tuple[Any, ...]]]:
         """Return names of columns and a row a section: for files."""
         own = ("constant_low", "constant_high", "stress_low", "stress_high")
-        columns = [*(self.table[name].tolist() for name in self.table.columns), self.names]
+        columns = [*(self.table[name].tolist() for name in self.table.columns), self.names, self.errors]
         columns += [getattr(self, name).tolist() for name in own]
-        names = (*self.table.columns, "hand_name", *(f"hand_{name}" for name in own))
+        names = (*self.table.columns, "hand_name", "no_answer", *(f"hand_{name}" for name in own))
         return names, list(zip(*columns, strict=True))
 
     def plot(self, ax: Axes | None = None, **options: Any) -> Any:
@@ -137,7 +151,7 @@ def hand_method_range(
     grid : mapping of str to iterable
         The values of each dimension, or one that is held; every combination is solved.
     hand : str or callable, optional
-        The idealisation of a trade shape, such as ``'full_depth'``; or ``hand(**dimensions)`` that returns whatever
+        The idealisation, such as ``'full_depth'``; or ``hand(**dimensions)`` that returns whatever
         `torsionfe.compare` takes for plates. By default the shape's first idealisation, or what is found in any
         other outline.
     **options
@@ -146,7 +160,7 @@ def hand_method_range(
     Returns
     -------
     HandRange
-        Sections that cannot be built, solved or taken for plates have no answer; the table says why.
+        Sections that cannot be built, solved or taken for plates have no answer; ``errors`` says why.
 
     Raises
     ------
@@ -155,12 +169,19 @@ def hand_method_range(
     """
     if not isinstance(grid, Mapping) or not grid:
         raise InputError(f"grid must be a mapping of dimension to values, got {grid!r:.80}")
-    if hand is not None and not isinstance(hand, str) and not callable(hand):
+    if isinstance(hand, str):
+        one_of("hand", hand, tuple(IDEALISATIONS))
+    elif hand is not None and not callable(hand):
         raise InputError(f"hand must be the name of an idealisation or a function of the dimensions, got {hand!r:.80}")
-    fixed = {name: list(values) if _many(values) else [values] for name, values in grid.items()}
-    found = sweep(fixed, build, **options)
-    solved = found.solved
-    methods = [_method(build, hand, point) if solved[k] else None for k, point in enumerate(combinations(fixed))]
+    # an iterator is read twice
+    held = {name: list(values) if isinstance(values, Iterator) else values for name, values in grid.items()}
+    found = sweep(held, build, **options)
+    methods: list[HandMethod | None] = []
+    errors = []
+    for solved, words, point in zip(found.solved, found["error"], combinations(held), strict=True):
+        method, why = _method(build, hand, point) if solved else (None, words)
+        methods.append(method)
+        errors.append(why)
     constant = np.array([math.nan if by is None else by.torsion_constant for by in methods])
     stress = np.array([math.nan if by is None else by.stress_per_torque for by in methods])
     lower, upper, peak = (
@@ -176,27 +197,20 @@ def hand_method_range(
         stress / (peak * (1.0 + doubt)) - 1.0,
         stress / (peak * np.maximum(1.0 - doubt, 1e-12)) - 1.0,
         tuple("" if by is None else by.name for by in methods),
+        tuple(errors),
     )
 
 
-def _many(values: Any) -> bool:
-    return not isinstance(values, (str, bytes)) and hasattr(values, "__iter__")
-
-
-def _method(build: Callable[..., Outline], hand: Any, point: Mapping[str, Any]) -> HandMethod | None:
-    """Return the hand method of one section; None where it has no answer."""
+def _method(build: Callable[..., Outline], hand: Any, point: Mapping[str, Any]) -> tuple[HandMethod | None, str]:
+    """Return the hand method of one section, or why it has no answer."""
     try:
         outline = build(**point)
         if isinstance(hand, str):
-            return hand_methods(outline, _stated(outline, hand))[0]
-        return hand_methods(outline, None if hand is None else hand(**point))[0]
-    except TorsionError:
-        return None
+            return hand_methods(outline, _stated(outline, hand))[0], ""
+        return hand_methods(outline, None if hand is None else hand(**point))[0], ""
+    except Exception as error:  # whatever the user's function does, what was solved is kept
+        return None, f"hand method: {error}" if isinstance(error, TorsionError) else f"{type(error).__name__}: {error}"
 
 
-def _stated(outline: Outline, idealisation: str) -> Any:
-    from torsionfe.outline.shapes import TradeShape
-
-    if not isinstance(outline, TradeShape):
-        raise InputError("only trade shapes have idealisations by name")
-    return outline.plates(idealisation)
+def _stated(outline: Outline, idealisation: str) -> PlateSet:
+    return outline.plates(idealisation) if isinstance(outline, TradeShape) else derive_plates(outline, idealisation)
