@@ -10,8 +10,10 @@ from torsionfe.outline import shapes
 from torsionfe.outline.fillets import unfilleted
 from torsionfe.output.compare_plot import draw_errors, plot_comparison
 from torsionfe.output.tables import csv_text, markdown_text
+from torsionfe.quantities import UnitSystem
 from torsionfe.study.compare import compare
 from torsionfe.study.hand import hand_methods
+from torsionfe.study.single import answer
 
 LEVER = shapes.angle(62.0, 46.0, 13.0, root_radius=7.0, toe_radius=4.0)
 
@@ -248,3 +250,15 @@ def test_methods_of_an_outline_that_nobody_described():
     assert hand_methods(plain)[0].torsion_constant == pytest.approx(
         tf.plate_sum(shapes.angle(80, 80, 8).plates()).torsion_constant_twist, rel=0.01
     )
+
+
+def test_the_answer_of_a_section_tells_its_hand_method(lever):
+    told = str(answer(lever, UnitSystem("mm"), torque=450e3))
+    assert "by hand (centreline)" in told
+    assert "-18 % off, conservative for stiffness" in told
+    assert "-20 % off, not conservative for strength" in told
+    assert "hot spot in a fillet of radius 7" in told
+    tube = str(answer(tf.solve_torsion(shapes.tube(50.0, 2.0), rel_tol=1e-4), UnitSystem("")))
+    assert "by hand (thin cells)" in tube
+    shaft = tf.solve_torsion(shapes.keyed_shaft(44, 12, 5, 0.8), rel_tol=1e-2, peak_tol=0.1)
+    assert "by hand" not in str(answer(shaft, UnitSystem("")))

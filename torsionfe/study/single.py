@@ -6,11 +6,11 @@ import math
 from dataclasses import dataclass
 
 from torsionfe.checks import finite, positive
-from torsionfe.closed_form.plates import PlateSum, plate_sum
 from torsionfe.errors import InputError
-from torsionfe.outline.shapes import TradeShape
 from torsionfe.quantities import UnitSystem
-from torsionfe.text import number, percent, table
+from torsionfe.study.compare import WITHIN, ComparedMethod, compare
+from torsionfe.study.hand import hand_methods
+from torsionfe.text import number, percent, signed_percent, table
 from torsionfe.torsion.bounds import Bounds
 from torsionfe.torsion.solution import TorsionSolution
 
@@ -29,15 +29,15 @@ class Answer:
         force * length.
     twist : Bounds or None
         Rotation between the bar's ends, rad.
-    hand : PlateSum or None
-        The thin-plate sum, where the section's plates are known.
+    hand : ComparedMethod or None
+        The hand method by the first idealisation, where plates or thin cells stand for the section.
     """
 
     solution: TorsionSolution
     system: UnitSystem
     torque: float | None
     twist: Bounds | None
-    hand: PlateSum | None
+    hand: ComparedMethod | None
 
     def __str__(self) -> str:
         rows = [*self._section(), *self._stress(), *self._bar(), *self._by_hand()]
@@ -83,23 +83,21 @@ class Answer:
     def _by_hand(self) -> list[tuple[str, str]]:
         if self.hand is None:
             return []
-        j = self.solution.torsion_constant.value
-        twist, stress = self.hand.torsion_constant_twist, self.hand.torsion_constant_stress
-        thickest = max(plate.thickness for plate in self.hand.plates)
-        rows = [
-            (
-                f"thin-plate sum ({self.hand.idealisation})",
-                f"J = {number(twist, 5)}{self._unit(self.system.power(4))}, {percent(twist / j - 1.0)} off",
-            )
-        ]
-        spot = self.solution.hot_spot
-        if spot is not None:
-            ratio = thickest / stress / spot.stress_per_torque - 1.0
-            factor = 1.0 if self.torque is None else abs(self.torque)
+        by, factor = self.hand.method, 1.0 if self.torque is None else abs(self.torque)
+        constant = f"J = {number(by.torsion_constant, 5)}{self._unit(self.system.power(4))}"
+        name = f"by hand ({by.name.replace('_', ' ')})"
+        rows = [(name, f"{constant}, {_off(self.hand.constant_error, self.hand.stiffness, 'stiffness')}")]
+        rows.append(("  reason", self.hand.constant_reason))
+        if not math.isnan(self.hand.stress_error):
             unit = self._unit(self.system.stress) if self.torque is not None else ""
-            peak = number(thickest / stress * factor)
-            rows.append(("  its peak shear stress", f"{peak}{unit}, {percent(ratio)} off"))
+            peak = f"{number(by.stress_per_torque * factor)}{unit}"
+            off = _off(self.hand.stress_error, self.hand.strength, "strength")
+            rows += [("  its peak shear stress", f"{peak}, {off}"), ("  reason", self.hand.stress_reason)]
         return rows
+
+
+def _off(error: float, verdict: str, what: str) -> str:
+    return f"{signed_percent(error)} off, {verdict}" + ("" if verdict == WITHIN else f" for {what}")
 
 
 def answer(
@@ -139,11 +137,8 @@ def answer(
         j = solution.torsion_constant
         ends = sorted((load * flexibility / j.upper, load * flexibility / j.lower))
         twist = Bounds(*ends)
-    outline = solution.outline
-    hand = None
-    if isinstance(outline, TradeShape):
-        try:
-            hand = plate_sum(outline.plates())
-        except InputError:  # a solid or hollow shape is no set of plates
-            hand = None
+    try:
+        hand = compare(solution, hand_methods(solution.outline)[0], torque=load).methods[0]
+    except InputError:  # neither plates nor thin cells stand for it
+        hand = None
     return Answer(solution, system, load, twist, hand)
