@@ -1,4 +1,4 @@
-"""The outlines that every benchmark uses: twelve sections of practice (dimensions invented, mm), and a comb of any size.
+"""The outlines that every benchmark uses: twelve of practice, their dimensions invented (mm), and a comb.
 
 Each is a function that builds a fresh outline, so that nothing kept from an earlier run is measured.
 """

@@ -158,8 +158,8 @@ def honesty(known, worst):
     head = ["order", "rel_tol, peak_tol", "honest", "true/stated", "stated", "true", "largest true", "J enclosed"]
     notes = [
         f"{len(known)} cases; true/stated, stated and true: medians. Honest: the true error of the peak stress per"
-        " torque is within the stated one. J enclosed: the true J lies between the bounds (ellipses left out: their arcs"
-        " are another outline)."
+        " torque is within the stated one. J enclosed: the true J lies between the bounds (ellipses left out: their"
+        " arcs are another outline)."
     ]
     publish("peak_honesty", "The stated error of the peak", head, rows, notes)
     missed = sorted((row for pair in verdicts for row in _dishonest(*pair)), reverse=True, key=lambda row: row[0])

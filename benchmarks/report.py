@@ -78,7 +78,7 @@ def publish(name: str, title: str, head, rows, notes=(), *, show=True) -> None:
         print("\n".join(["", *notes, ""]), flush=True)
     lines = [f"**{title}**", "", _line(head), "|" + " --- |" * len(head), *map(_line, rows), "", " ".join(notes)]
     RESULTS.mkdir(exist_ok=True)
-    (RESULTS / f"{name}.md").write_text("\n".join(lines) + "\n")
+    (RESULTS / (name if name.endswith(".tmp") else f"{name}.md")).write_text("\n".join(lines) + "\n")
 
 
 def _line(cells) -> str:
