@@ -3,7 +3,7 @@
     python benchmarks/soak.py [--count 10000] [--seed 1] [--resume results/soak.jsonl]
 
 Half of the outlines are those of the property tests; the other half are wilder: needles, voids that nearly touch,
-tiny fillets, arcs beyond a half circle, hundreds of voids, vertices a billionth apart, sections far from the origin, and
+tiny fillets, arcs beyond a half circle, many voids, vertices a billionth apart, sections far from the origin, and
 drawings that cross themselves, which must be refused. A refusal may only be one of this project's errors, with a place
 where one can be named. Each section runs in a worker process with a time limit. One in twenty is solved again to a
 tighter bracket, and both brackets must overlap. With ``--resume``, finished cases are kept in a file and not repeated.

@@ -59,7 +59,7 @@ def _peak_error(peak: Peak, before: Seen | None, order: int) -> Floats:
     """Return the relative error of each peak: what its samples leave open, and its change since the last mesh.
 
     A mesh that is no finer about a peak changes little there and proves nothing: the error falls no faster than the
-    size of the sides to the power ``order + 1``, the rate of the samples.
+    size of the sides to the power ``order``, the rate that the stress is sure of.
     """
     if before is None or not len(before.peak.tau) or not len(peak.tau):
         return np.full(len(peak.tau), 1.0)
@@ -68,5 +68,5 @@ def _peak_error(peak: Peak, before: Seen | None, order: int) -> Floats:
     away = np.hypot(*np.moveaxis(peak.points[:, None] - before.peak.points, 2, 0))
     near = away.argmin(axis=1)
     known = before.rel_error[near]
-    gain = np.minimum(peak.size / before.peak.size[near], 1.0) ** (order + 1)
+    gain = np.minimum(peak.size / before.peak.size[near], 1.0) ** order
     return np.asarray(np.where(known < 1.0, np.maximum(found, gain * known), found))

@@ -121,9 +121,9 @@ def _forced(look: Look, wanted: float) -> Ints:
     open_ = look.rel_error > wanted
     if not open_.any():
         return np.zeros(len(look.fields.space.mesh.triangles), dtype=np.int64)
-    # the error of the samples falls about as h**(p + 1), and two rounds halve every side
+    # the error of the samples falls as h**p or faster, and two rounds halve every side
     ratio = np.minimum(look.rel_error[open_], 1.0) / wanted
-    rounds = 2 * np.clip(np.ceil(np.log2(ratio) / (look.fields.space.order + 1)), 1, 2).astype(np.int64)
+    rounds = 2 * np.clip(np.ceil(np.log2(ratio) / look.fields.space.order), 1, 2).astype(np.int64)
     return around_peaks(look.boundary, look.peak.side[open_], rounds)
 
 
