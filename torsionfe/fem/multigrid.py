@@ -84,7 +84,7 @@ def _level(matrix: csr_array, down: csr_array) -> _Level:
     top = 1.0
     for _ in range(12):  # power iteration on the scaled matrix
         vector = scale * (matrix @ vector)
-        top = float(np.linalg.norm(vector))
+        top = float(np.sqrt(_dot(vector, vector)))
         vector /= top
     return _Level(matrix, scale, 1.1 * top, down)
 
