@@ -33,8 +33,8 @@ SETTINGS = [
     for order, most in ((1, 30_000), (2, 60_000), (3, 60_000))
     for rel_tol, peak_tol in ((1e-2, 1e-2), (1e-3, 2e-3), (2e-4, 5e-4))
 ]
-#: The scan's values of _CAUTION and _OF_CHANGE.
-CAUTION, OF_CHANGE = (1.0, 1.3, 1.6), (0.5, 0.7, 1.0)
+#: The scan's values of _CAUTION and of _OF_CHANGE, each beside the value of the other that is in force.
+CAUTION, OF_CHANGE = (1.0, 1.3, 1.6, 2.0), (0.5, 0.7, 1.0)
 
 
 @dataclass(frozen=True)
@@ -172,13 +172,14 @@ def scan(known):
     """Judge again with other constants, at the settings of order 2."""
     settings = [s for s in SETTINGS if s["order"] == 2]
     before = look._CAUTION, look._OF_CHANGE
+    pairs = sorted({*((c, before[1]) for c in CAUTION), *((before[0], c) for c in OF_CHANGE)})
     rows = []
     try:
-        for look._CAUTION in CAUTION:
-            for look._OF_CHANGE in OF_CHANGE:
-                found = [judged(truth, s) for s in settings for truth in known]
-                stated = median(v.stated for v in found)
-                rows.append([f"{look._CAUTION:g}", f"{look._OF_CHANGE:g}", _share(found), f"{100 * stated:.2g} %"])
+        for look._CAUTION, look._OF_CHANGE in pairs:
+            found = [judged(truth, s) for s in settings for truth in known]
+            stated = median(v.stated for v in found)
+            rows.append([f"{look._CAUTION:g}", f"{look._OF_CHANGE:g}", _share(found), f"{100 * stated:.2g} %"])
+            print(*rows[-1], flush=True)
     finally:
         look._CAUTION, look._OF_CHANGE = before
     head = ["_CAUTION", "_OF_CHANGE", "honest", "stated, median"]
