@@ -389,6 +389,17 @@ def test_corner_stress_is_within_its_error_and_scales(outline):
         assert tiny.intensity == pytest.approx(scaled, rel=tiny.rel_error)
 
 
+@pytest.mark.parametrize("gap", [1e-1, 1e-3, 1e-6])
+def test_corner_stress_where_another_wall_is_near(gap):
+    # two halves joined by a neck: each corner's circles must stay clear of the long walls opposite
+    half = [(-1.0, -1.0), (-gap / 2, -gap), (gap / 2, -gap), (1.0, -1.0)]
+    outline = Outline(half + [(-x, -y) for x, y in half])
+    rough, sure = (tf.solve_torsion(outline, tol, order, peak_tol=1.0) for tol, order in ((1e-3, 2), (1e-5, 3)))
+    assert len(rough.corner_stresses) == 4
+    for coarse, fine in zip(rough.corner_stresses, sure.corner_stresses, strict=True):
+        assert abs(coarse.intensity / fine.intensity - 1.0) <= coarse.rel_error < 0.5
+
+
 @pytest.mark.parametrize("degrees", [200, 270, 330])
 def test_a_small_fillet_reads_what_the_corner_foretold(degrees):
     sharp = tf.solve_torsion(sector(1.0, degrees), peak_tol=1.0).corner_stresses[0]

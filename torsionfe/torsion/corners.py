@@ -22,6 +22,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from torsionfe.checks import Floats, Ints, finite, positive
+from torsionfe.outline.crossings import fraction_on
 from torsionfe.outline.edges import Edges
 from torsionfe.outline.fillets import sharp_corners
 from torsionfe.text import number, percent, table
@@ -149,14 +150,12 @@ def _reach(edges: Edges, rows: Ints) -> tuple[Floats, np.ndarray]:
     """Return how far from each corner only its two flanks lie, and whether one of them is curved."""
     reach = np.empty(len(rows))
     curved = np.zeros(len(rows), dtype=bool)
-    t = np.linspace(0.0, 1.0, 65)
     every = np.arange(len(edges))
-    cloud = edges.points(np.repeat(every, len(t)), np.tile(t, len(edges))).reshape(len(edges), len(t), 2)
-    step = edges.length / (len(t) - 1)
     for k, row in enumerate(rows):
         before = edges.previous[row]
         corner = edges.start[row]
-        distance = np.hypot(*np.moveaxis(cloud - corner, 2, 0)) - 0.5 * step[:, None]
+        nearest = edges.points(every, fraction_on(edges, every, np.tile(corner, (len(edges), 1)), np.inf))
+        distance = np.hypot(*(nearest - corner).T)
         other = np.ones(len(edges), dtype=bool)
         other[[row, before]] = False
         flanks = [np.hypot(*(edges.end[row] - corner)), np.hypot(*(edges.start[before] - corner))]
