@@ -1,6 +1,7 @@
 """What must hold for every section: order and nesting of bounds, motion, scale, growth, circulation, torque."""
 
 import math
+from itertools import pairwise
 
 import numpy as np
 import pytest
@@ -89,7 +90,7 @@ def test_more_material_is_never_softer(outline, growth):
 @given(outlines())
 def test_refinement_never_widens_the_bracket(outline):
     passes = tf.solve_torsion(outline, rel_tol=1e-4, peak_tol=1e-2).passes
-    for before, after in zip(passes, passes[1:], strict=False):
+    for before, after in pairwise(passes):
         assert after.lower >= before.lower * (1.0 - 1e-11)
         assert after.upper <= before.upper * (1.0 + 1e-11)
 

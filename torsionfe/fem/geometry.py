@@ -161,7 +161,7 @@ def inverted(jacobian: Floats) -> tuple[Floats, Floats]:
 
 def _straight(mesh: TriMesh, which: Ints, quadrature: Rule) -> Patch:
     corners = mesh.nodes[mesh.triangles[which]]
-    inverse, det = inverted(np.einsum("cr,kcx->kxr", _SLOPES, corners))
+    inverse, det = inverted(np.stack([corners[:, 1] - corners[:, 0], corners[:, 2] - corners[:, 0]], axis=2))
     points = _corner_weights(quadrature.points) @ corners
     return Patch(which, quadrature, points, inverse[:, None], det[:, None] * quadrature.weights)
 

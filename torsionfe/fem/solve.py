@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 __all__ = ["DIRECT_UP_TO", "reduced", "solve_constrained"]
 
 #: Systems up to this size are factorised, larger ones iterated: where the two cost the same.
-DIRECT_UP_TO = 10_000
+DIRECT_UP_TO = 25_000
 
 
 def reduced(stiffness: csr_array, unknown: Ints, count: int) -> csr_array:
@@ -60,7 +60,8 @@ def solve_constrained(space: Space, stiffness: csr_array, load: Floats, unknown:
         return np.zeros(len(load))
     free = unknown >= 0
     right = np.asarray(np.bincount(unknown[free], load[free], count), dtype=float)
-    matrix = reduced(stiffness, unknown, count)
+    one_pinned = count == len(unknown) - 1 and unknown[0] < 0 and bool((unknown[1:] == np.arange(count)).all())
+    matrix = stiffness[1:, 1:].tocsr() if one_pinned else reduced(stiffness, unknown, count)
     if count <= DIRECT_UP_TO:
         solution = solve_positive(matrix, right)
     else:

@@ -42,11 +42,11 @@ def bisect(mesh: TriMesh, marked: NDArray[np.bool_]) -> tuple[TriMesh, Ints]:
 
 def _close(mesh: TriMesh, marked: NDArray[np.bool_]) -> NDArray[np.bool_]:
     """Return which links to cut: a triangle with a cut link must have its own first link cut."""
-    first = mesh.triangle_links[:, 0]
+    first, second, third = mesh.triangle_links.T
     cut = np.zeros(len(mesh.links), dtype=bool)
     cut[first[marked]] = True
     while True:
-        hanging = cut[mesh.triangle_links].any(axis=1) & ~cut[first]
+        hanging = (cut[second] | cut[third]) & ~cut[first]
         if not hanging.any():
             return cut
         cut[first[hanging]] = True

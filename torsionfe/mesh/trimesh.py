@@ -53,8 +53,8 @@ class TriMesh:
     @cached_property
     def _linked(self) -> tuple[Ints, Ints, Ints]:
         """Links (node pairs, low first), the links of each triangle, and how often each is used."""
-        ends = np.stack([self.triangles[:, [1, 2, 0]], self.triangles[:, [2, 0, 1]]], axis=2).reshape(-1, 2)
-        key = ends.min(axis=1) * np.int64(len(self.nodes)) + ends.max(axis=1)
+        a, b = self.triangles[:, [1, 2, 0]].ravel(), self.triangles[:, [2, 0, 1]].ravel()
+        key = np.minimum(a, b) * np.int64(len(self.nodes)) + np.maximum(a, b)
         unique, inverse, uses = np.unique(key, return_inverse=True, return_counts=True)
         links = np.stack(np.divmod(unique, len(self.nodes)), axis=1)
         return links, inverse.reshape(-1, 3), uses

@@ -15,7 +15,8 @@ from torsionfe.torsion.fields import Fields
 __all__ = ["around_peaks", "refined"]
 
 _ROUNDS = 6  # bisections of one triangle in one pass
-_AIM = 0.7  # of the gap that is wanted
+_AIM = 0.85  # of the gap that is wanted
+_REACH = 2  # sides to each side of a peak's own that are refined with it
 
 
 def refined(fields: Fields, wanted: float, forced: Ints) -> TriMesh:
@@ -66,7 +67,8 @@ def _decay(mesh: TriMesh, corners: dict[int, float], order: int) -> Floats:
     """Return the power of its area by which each triangle's share of the gap falls."""
     at_node = np.full(len(mesh.nodes), order + 1.0)
     at_node[list(corners)] = list(corners.values())
-    return np.asarray(at_node[mesh.triangles].min(axis=1), dtype=float)
+    a, b, c = at_node[mesh.triangles.T]
+    return np.asarray(np.minimum(np.minimum(a, b), c), dtype=float)
 
 
 def _even_share(share: Floats, decay: Floats, wanted: float) -> float:
@@ -75,7 +77,7 @@ def _even_share(share: Floats, decay: Floats, wanted: float) -> float:
     positive = np.maximum(share, 1e-300)
     for _ in range(50):
         middle = 0.5 * (low + high) if low > 0.0 else high / 16.0
-        halvings = np.maximum(np.log2(positive / middle) / decay, 0.0)
+        halvings = np.maximum(np.ceil(np.log2(positive / middle) / decay), 0.0)
         # 2^h children of share * 2^(-h decay) each; beside a corner only one child keeps the singularity
         if float(np.sum(share * 2.0 ** (halvings * (np.minimum(1.0, decay - 0.5) - decay)))) > wanted:
             high = middle
@@ -99,8 +101,11 @@ def around_peaks(stress: BoundaryStress, sides: Ints, rounds: Ints) -> Ints:
     """
     mesh = stress.mesh
     wanted = np.zeros(len(mesh.nodes), dtype=np.int64)
-    for offset in (-1, 0, 1):
+    for offset in range(-_REACH, _REACH + 1):
         rows = stress.sides[(sides + offset) % len(stress.sides)]
         for end in range(2):
             np.maximum.at(wanted, mesh.sides[rows, end], rounds)
+    here = wanted[mesh.triangles].max(axis=1)
+    # one layer more, one bisection less: what is left coarse nearby would set the value that the peak settles on
+    np.maximum.at(wanted, mesh.triangles.ravel(), np.repeat(here - 1, 3))
     return np.asarray(wanted[mesh.triangles].max(axis=1))

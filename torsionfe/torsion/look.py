@@ -9,15 +9,18 @@ import numpy as np
 from torsionfe.checks import Floats
 from torsionfe.mesh.trimesh import TriMesh
 from torsionfe.torsion.boundary import BoundaryStress, boundary_stress
+from torsionfe.torsion.bounds import Bounds
 from torsionfe.torsion.fields import Fields, solve_fields
 from torsionfe.torsion.hot_spot import Peak, find_peaks
 
-__all__ = ["Look", "Seen", "look_at"]
+__all__ = ["OF_GAP", "Look", "Seen", "look_at"]
 
 #: The stated error is this many times what samples and last change show: measured on the reference sections by
 #: ``benchmarks/peak_honesty.py``, which says how often the true error is then within it.
 _CAUTION = 1.6
 _OF_CHANGE = 0.7
+#: On meshes of a few elements samples may agree by accident: no less than this many times the bracket's square.
+OF_GAP = 2.0
 
 
 @dataclass(frozen=True)
@@ -52,14 +55,15 @@ def look_at(mesh: TriMesh, order: int, before: Seen | None) -> Look:
     fields = solve_fields(mesh, order)
     boundary = boundary_stress(fields.space, fields.omega)
     peak = find_peaks(boundary)
-    return Look(fields, boundary, peak, _peak_error(peak, before, order))
+    coarse = OF_GAP * Bounds(fields.lower, fields.upper).rel_gap ** 2
+    return Look(fields, boundary, peak, np.maximum(_peak_error(peak, before, order), coarse))
 
 
 def _peak_error(peak: Peak, before: Seen | None, order: int) -> Floats:
     """Return the relative error of each peak: what its samples leave open, and its change since the last mesh.
 
     A mesh that is no finer about a peak changes little there and proves nothing: the error falls no faster than the
-    size of the sides to the power ``order``, the rate that the stress is sure of.
+    size of the sides to the power ``order + 1``, the rate of the samples.
     """
     if before is None or not len(before.peak.tau) or not len(peak.tau):
         return np.full(len(peak.tau), 1.0)
@@ -68,5 +72,5 @@ def _peak_error(peak: Peak, before: Seen | None, order: int) -> Floats:
     away = np.hypot(*np.moveaxis(peak.points[:, None] - before.peak.points, 2, 0))
     near = away.argmin(axis=1)
     known = before.rel_error[near]
-    gain = np.minimum(peak.size / before.peak.size[near], 1.0) ** order
+    gain = np.minimum(peak.size / before.peak.size[near], 1.0) ** (order + 1)
     return np.asarray(np.where(known < 1.0, np.maximum(found, gain * known), found))

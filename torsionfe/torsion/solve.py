@@ -12,7 +12,7 @@ from torsionfe.outline.outline import Outline
 from torsionfe.torsion.adaptive import around_peaks, refined
 from torsionfe.torsion.bounds import Bounds
 from torsionfe.torsion.frame import Frame
-from torsionfe.torsion.look import Look, Seen, look_at
+from torsionfe.torsion.look import OF_GAP, Look, Seen, look_at
 from torsionfe.torsion.solution import Pass, TorsionSolution
 
 __all__ = ["solve_torsion"]
@@ -67,6 +67,8 @@ def solve_torsion(
     from torsionfe.mesh.triangulate import triangulate
 
     tolerance, peak_wanted = checked_settings(outline, rel_tol, order, peak_tol, max_unknowns)
+    # a peak can be no surer than its mesh is fine: see OF_GAP
+    aim = min(tolerance, math.sqrt(peak_wanted / OF_GAP))
     frame = Frame.of(outline)
     mesh = frame.inward(triangulate(outline))
     trail: list[Pass] = []
@@ -76,7 +78,7 @@ def solve_torsion(
         shortfall = _shortfall(look, tolerance, peak_wanted)
         if not shortfall or len(trail) == _MOST_PASSES:
             break
-        mesh = refined(look.fields, tolerance * look.fields.lower, _forced(look, peak_wanted))
+        mesh = refined(look.fields, aim * look.fields.lower, _forced(look, peak_wanted))
         if mesh.unknowns(order) > max_unknowns:
             shortfall += f" within {max_unknowns} unknowns"
             break
@@ -121,9 +123,9 @@ def _forced(look: Look, wanted: float) -> Ints:
     open_ = look.rel_error > wanted
     if not open_.any():
         return np.zeros(len(look.fields.space.mesh.triangles), dtype=np.int64)
-    # the error of the samples falls as h**p or faster, and two rounds halve every side
+    # the error of the samples falls about as h**(p + 1), and two rounds halve every side
     ratio = np.minimum(look.rel_error[open_], 1.0) / wanted
-    rounds = 2 * np.clip(np.ceil(np.log2(ratio) / look.fields.space.order), 1, 2).astype(np.int64)
+    rounds = 2 * np.clip(np.ceil(np.log2(ratio) / (look.fields.space.order + 1)), 1, 2).astype(np.int64)
     return around_peaks(look.boundary, look.peak.side[open_], rounds)
 
 
