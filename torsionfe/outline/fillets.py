@@ -120,13 +120,17 @@ def _refuse_smooth(edges: Edges, rows: Ints) -> None:
     if not smooth.any():
         return
     row = int(rows[np.argmax(smooth)])
-    x, y = edges.start[row]
-    void = f" of void {edges.loop[row] - 1}" if edges.loop[row] else ""
+    vertex, place = _vertex(edges, row)
     raise OutlineError(
-        f"vertex {edges.vertex[row]}{void} ({x:g}, {y:g}) is no corner to round: its edges meet at "
-        f"{np.degrees(edges.interior_angle[row]):.2f} degrees",
-        (float(x), float(y)),
+        f"{vertex} is no corner to round: its edges meet at {np.degrees(edges.interior_angle[row]):.2f} degrees", place
     )
+
+
+def _vertex(edges: Edges, row: int) -> tuple[str, tuple[float, float]]:
+    """Return the vertex at the start of an edge in words, and where it is."""
+    x, y = (float(value) for value in edges.start[row])
+    void = f" of void {edges.loop[row] - 1}" if edges.loop[row] else ""
+    return f"vertex {edges.vertex[row]}{void} ({x:g}, {y:g})", (x, y)
 
 
 @dataclass(frozen=True)
@@ -222,12 +226,9 @@ def _refuse_misfits(edges: Edges, rows: Ints, radius: Floats, names: list[str]) 
     close = _misfits(edges, rows, np.where(alike, fails, 1.0) * radius)
     worst = next((int(k) for k in close if names[k] == names[worst]), worst)
     row, most = int(rows[worst]), _rounded_down(fits * radius[worst])
-    x, y = edges.start[row]
-    void = f" of void {edges.loop[row] - 1}" if edges.loop[row] else ""
+    vertex, place = _vertex(edges, row)
     raise OutlineError(
-        f"{names[worst]} {radius[worst]:g} does not fit at vertex {edges.vertex[row]}{void} ({x:g}, {y:g}): "
-        f"the edges allow {most:.6g} at most",
-        (float(x), float(y)),
+        f"{names[worst]} {radius[worst]:g} does not fit at {vertex}: the edges allow {most:.6g} at most", place
     )
 
 
