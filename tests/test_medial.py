@@ -36,6 +36,23 @@ def sizes(plates) -> np.ndarray:
 # --- inscribed circles --------------------------------------------------------------------------------
 
 
+@pytest.mark.parametrize("bulge", [1.5, 4.566, 12.0])
+def test_a_bulge_too_small_to_see_leaves_a_square_one_plate(bulge):
+    # from inside it some rays meet nothing but its own arc
+    square = Outline([(0, 0), (0.5, 0), (0.500005, 0), (1, 0), (1, 1), (0, 1)], [0, bulge, 0, 0, 0, 0])
+    circles = inscribed_circles(square)
+    assert np.isfinite(circles.radius).all()
+    assert np.isfinite(circles.touch).all()
+    assert sizes(derive_plates(square).plates) == pytest.approx(np.array([[1.0, 1.0]]), abs=1e-3)
+
+
+def test_plates_beside_a_wall_thinner_than_the_chords():
+    void = shapes.round_bar(1.0).translated(0.49995, 0.0).rotated(0.7)
+    derived = derive_plates(Outline([(-1, 0), (1, 0)], [1, 1], [void]))
+    assert 0.0 <= derived.covered <= 1.0
+
+
+
 @pytest.mark.parametrize(
     "outline",
     [

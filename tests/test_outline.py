@@ -84,6 +84,23 @@ def test_voids_that_are_none(void, message):
         Outline(SQUARE.vertices, voids=[void])
 
 
+@pytest.mark.parametrize("voids", [5, None, True, SQUARE.scaled(0.1)])
+def test_voids_that_are_no_list(voids):
+    with pytest.raises(OutlineError, match=r"voids must be a list of Outlines, got \w+: write voids=\[void\]"):
+        Outline(SQUARE.vertices, voids=voids)
+
+
+def test_chords_never_cross_where_a_wall_is_thinner_than_they_are_coarse():
+    void = shapes.round_bar(1.0).translated(0.4995, 0.0).rotated(0.7)  # 5e-4 from the outer arc
+    outline = Outline([(-1, 0), (1, 0)], [1, 1], [void])
+    for tolerance in (1e-2, 1e-3, 1e-5):
+        polygon = outline.polygon(tolerance)
+        assert polygon.is_valid
+        assert polygon.area == pytest.approx(outline.area, rel=4.0 * tolerance)
+    coarse = Outline([(-1, 0), (1, 0)], [1, 1]).polygon(1e-2)
+    assert len(coarse.exterior.coords) < 40  # no finer than asked where nothing crosses
+
+
 def test_voids_must_be_apart():
     left = shapes.rectangle(2, 2).translated(3, 5)
     with pytest.raises(OutlineError, match=r"voids 0 and 1 touch or overlap at \(4, "):

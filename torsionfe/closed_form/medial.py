@@ -86,6 +86,10 @@ def inscribed_circles(outline: Outline, samples: int = 4000) -> Circles:
         for k in range(0, len(foot), per_chunk)
     ]
     radius, touch, touch_row, filled = (np.concatenate(column) for column in zip(*parts, strict=True))
+    # from the depth of a tiny arc a ray may meet nothing
+    met = np.isfinite(radius)
+    foot, normal, row, radius = foot[met], normal[met], row[met], radius[met]
+    touch, touch_row, filled = touch[met], touch_row[met], filled[met]
     centre = foot + radius[:, None] * normal
     back, ahead = foot - centre, touch - centre
     cross = back[:, 0] * ahead[:, 1] - back[:, 1] * ahead[:, 0]

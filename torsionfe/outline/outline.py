@@ -67,7 +67,7 @@ class Outline:
         except ValueError as error:
             raise OutlineError(str(error)) from None
         points, turns = validate_loop(points, turns)
-        holes = tuple(voids)
+        holes = _listed(voids)
         for array in (points, turns):
             array.flags.writeable = False
         object.__setattr__(self, "vertices", points)
@@ -174,13 +174,19 @@ class Outline:
         Parameters
         ----------
         tolerance : float, optional
-            Largest distance between chord and arc (length); one millionth of the size by default.
+            Largest distance between chord and arc (length); one millionth of the size by default. Less is
+            taken where chords so coarse would cross each other.
         """
         from shapely import Polygon as ShapelyPolygon
 
-        off = 1e-6 * self.size if tolerance is None else positive("tolerance", tolerance)
-        rings = [loop._facets(off) for loop in (self, *self.voids)]
-        return ShapelyPolygon(rings[0], rings[1:])
+        finest = 1e-6 * self.size  # that of the checks when the outline was made
+        off = finest if tolerance is None else positive("tolerance", tolerance)
+        while True:
+            rings = [loop._facets(off) for loop in (self, *self.voids)]
+            polygon = ShapelyPolygon(rings[0], rings[1:])
+            if off <= finest or polygon.is_valid:
+                return polygon
+            off = max(0.1 * off, finest)  # chords of both faces of a thin wall cross
 
     def _own_area(self) -> float:
         p = self.vertices - self.vertices[0]
@@ -322,3 +328,10 @@ class Outline:
             f"<Outline {x1 - x0:.6g} x {y1 - y0:.6g}, {len(self.edges)} edges, "
             f"{n_arcs} arc{'s'[: n_arcs != 1]}, {n_voids} void{'s'[: n_voids != 1]}, area {self.area:.6g}>"
         )
+
+
+def _listed(voids: Iterable[Outline]) -> tuple[Outline, ...]:
+    if isinstance(voids, Outline) or not isinstance(voids, Iterable):
+        kind = type(voids).__name__
+        raise OutlineError(f"voids must be a list of Outlines, got {kind}: write voids=[void], or leave it out")
+    return tuple(voids)
