@@ -170,7 +170,8 @@ def main() -> None:
     notes = [
         "Elements of order 3, bracket 1e-7. As close as stated: within the reference's digits and our own error "
         "(published tables: J within 1 %, AISC, or 4.5 %, European tables whose printed formulas are approximations; "
-        "these are quoted from memory)."
+        "these are quoted from memory). Ellipses are drawn by arcs, 1e-6 off, so that their exact J need not lie "
+        "between the bounds of what was drawn."
     ]
     publish("verification_short", "Reference values beside ours", head, list(short_rows(checks)), notes)
     for check in checks:
