@@ -344,3 +344,10 @@ def test_printed_margins_are_rounded_down():
 def test_results_travel_between_processes():
     found = pickle.loads(pickle.dumps(SteppedBar([bar_of(20)]).margins(1e5, Allowables(100.0))))
     assert found[0].margin == bar_of(20).margins(1e5, Allowables(100.0))[0].margin
+
+
+def test_a_twist_margin_names_the_largest_torque_of_the_steps():
+    bar = SteppedBar([bar_of(20.0), bar_of(20.0)])
+    found = bar.margins(TorqueCase("two", {1: -9e4, 2: 3e4}), Allowables(twist=0.5))
+    (twist,) = [row for row in found if row.criterion == "twist"]
+    assert abs(twist.torque) == 6e4  # -9e4 + 3e4 in the first step, 3e4 in the second

@@ -364,3 +364,22 @@ def test_sums_approach_the_true_value_as_plates_thin_out(prefix):
     thick, thin = max(errors), min(errors)
     rate = math.log(errors[thick] / errors[thin]) / math.log(thick / thin)
     assert rate == pytest.approx(1.0, abs=0.05)
+
+
+def test_the_printed_share_of_each_plate_is_its_part_of_the_sum():
+    # beta 0.3123 and 0.2287 (Timoshenko and Goodier, ch. 10): 253 and 593 of 846
+    text = str(plate_sum([Plate(30.0, 3.0), Plate(12.0, 6.0)]))
+    assert "29.9 %" in text
+    assert "70.1 %" in text
+
+
+def test_a_stubby_plate_is_not_turned_and_its_rule_s_error_is_the_true_one():
+    assert plate_sum([Plate(12.0, 10.0)]).notes == ()
+    assert plate_sum([Plate(12.0, 10.0)]).plates[0].width == 12.0
+    # (1/3) / 0.2634 at b/t = 3
+    assert plate_sum([Plate(9.0, 3.0)], "third").notes[0].endswith("its beta is 27 % off the exact one")
+
+
+def test_coefficients_beyond_a_third_are_refused():
+    with pytest.raises(InputError, match=r"between 0 and 0\.34"):
+        CoefficientTable(np.array([1.0, 10.0]), np.array([0.208, 0.40]), np.array([0.141, 0.312]))
