@@ -412,3 +412,36 @@ def test_a_fillet_of_chords_is_told_of():
     polygon = shapes.angle(80, 80, 8, root_radius=8).polygon(0.05)
     printed = str(tf.solve_torsion(Outline.from_polygon(polygon), rel_tol=1e-2, peak_tol=0.1))
     assert "turn by 30 degrees or less, as the chords of a fillet do: see restore_arcs" in printed
+
+
+# --- printed bounds, and the error of a peak on a mesh that did not change there ----------------------------
+
+
+@pytest.mark.parametrize(
+    ("lower", "upper", "printed"),
+    [
+        (1234.5, 1234.9, "1234.70 (1234.50 to 1234.91)"),
+        (1.23451e12, 1.23459e12, "1.234550e+12 (1.234510e+12 to 1.234590e+12)"),
+        (1.2341e-7, 1.2349e-7, "1.23450e-7 (1.23409e-7 to 1.23491e-7)"),
+        (12345678.0, 12345999.0, "12345840 (12345670 to 12346000)"),
+    ],
+)
+def test_bounds_are_printed_outward_with_two_digits_of_their_distance(lower, upper, printed):
+    assert str(tf.Bounds(lower, upper)) == printed
+
+
+def test_a_peak_is_no_surer_where_its_mesh_is_no_finer():
+    from torsionfe.torsion.hot_spot import Peak
+    from torsionfe.torsion.look import Seen, _peak_error
+
+    def peak(size, tau=1.0):
+        one = np.array([1.0])
+        return Peak(tau * one, np.array([[0.5, 0.0]]), 1e-6 * one, np.array([0]), size * one)
+
+    before = Seen(peak(0.4), np.array([0.08]))
+    assert _peak_error(peak(0.4), before, 2)[0] == pytest.approx(0.08)
+    assert _peak_error(peak(0.2), before, 2)[0] == pytest.approx(0.01)  # a side halved: an eighth
+    assert _peak_error(peak(0.8), before, 2)[0] == pytest.approx(0.08)
+    # the change since the last mesh counts 0.7 times, and that with a caution of 1.6
+    assert _peak_error(peak(0.1, 1.1), before, 2)[0] == pytest.approx(1.6 * 0.7 * 0.1 / 1.1)
+    assert _peak_error(peak(0.4), None, 2)[0] == 1.0
