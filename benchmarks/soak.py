@@ -103,7 +103,13 @@ def _wrong_beside_others(solution):
 
 def _worker(tasks, results):
     warnings.simplefilter("error")
-    while (seed := tasks.get()) is not None:
+    while multiprocessing.parent_process().is_alive():  # a soak that is killed leaves no worker behind
+        try:
+            seed = tasks.get(timeout=5.0)
+        except queue.Empty:
+            continue
+        if seed is None:
+            return
         results.put(case(seed))
 
 

@@ -212,3 +212,11 @@ def test_a_radius_of_its_own_at_no_corner_is_refused():
     plank = Outline([(0, 0), (20, 0), (40, 0), (40, 10), (0, 10)])
     with pytest.raises(OutlineError, match=r"vertex 1 \(20, 0\) is no corner to round: its edges meet at 180.00"):
         round_corners(plank, {(0, 1): (2.0, "root radius")})
+
+
+@pytest.mark.parametrize("radius", [80.0, 1e6, 1e15, 1e25, 1e160, 1e300])
+def test_the_largest_radius_that_fits_is_named_however_large_the_one_asked(radius):
+    outline = shapes.angle(80, 80, 8)
+    with pytest.raises(OutlineError, match=r"fillet radius \S+ does not fit .* the edges allow 72 at most") as caught:
+        outline.filleted(radius)
+    assert f"radius {radius:g} does" in str(caught.value)

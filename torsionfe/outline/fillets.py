@@ -30,6 +30,7 @@ __all__ = ["SMOOTH", "fillet", "round_corners", "sharp_corners", "unfilleted"]
 #: Two edges that meet within this angle (radians) of straight on are smooth: no corner.
 SMOOTH = np.radians(0.1)
 _SLACK = 1e-9
+_HUGE = 1e9  # of the perimeter: a fillet of such a radius is longer than its edges at any corner that is one
 
 
 def sharp_corners(edges: Edges) -> Ints:
@@ -211,6 +212,8 @@ def _misfits(edges: Edges, rows: Ints, radius: Floats) -> Ints:
 
 def _refuse_misfits(edges: Edges, rows: Ints, radius: Floats, names: list[str]) -> None:
     """Raise where fillets do not fit, naming the largest of that name that would."""
+    asked = radius
+    radius = np.minimum(asked, _HUGE * edges.length.sum())  # fits nowhere either, and its square is finite
     misfits = _misfits(edges, rows, radius)
     if not len(misfits):
         return
@@ -219,7 +222,7 @@ def _refuse_misfits(edges: Edges, rows: Ints, radius: Floats, names: list[str]) 
     if len(_misfits(edges, rows, np.where(alike, 1e-6, 1.0) * radius)):
         alike[:] = True  # the other radii alone are too much: all of them together
     fits, fails = 0.0, 1.0  # by halving: the share of those radii that still fits
-    for _ in range(50):
+    for _ in range(90):
         middle = 0.5 * (fits + fails)
         good = not len(_misfits(edges, rows, np.where(alike, middle, 1.0) * radius))
         fits, fails = (middle, fails) if good else (fits, middle)
@@ -228,7 +231,7 @@ def _refuse_misfits(edges: Edges, rows: Ints, radius: Floats, names: list[str]) 
     row, most = int(rows[worst]), _rounded_down(fits * radius[worst])
     vertex, place = _vertex(edges, row)
     raise OutlineError(
-        f"{names[worst]} {radius[worst]:g} does not fit at {vertex}: the edges allow {most:.6g} at most", place
+        f"{names[worst]} {asked[worst]:g} does not fit at {vertex}: the edges allow {most:.6g} at most", place
     )
 
 
