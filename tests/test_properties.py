@@ -48,10 +48,12 @@ def test_bounds_are_in_order_and_enclose_a_much_tighter_bracket(outline):
 
 
 @few
-@given(outlines(), st.floats(0.0, 2.0 * np.pi), st.sampled_from([0.0, 3.0, 1e6]), st.sampled_from([1e-6, 1.0, 3e5]))
+@given(outlines(), st.floats(0.0, 2.0 * np.pi), st.sampled_from([0.0, 3.0, 1e6]), st.sampled_from([1e-6, 1.0, 1e6]))
 def test_motion_reflection_and_scale(outline, angle, away, scale):
     here = tf.solve_torsion(outline, **QUICK)
     size = outline.size
+    # a void is an outline too, and lies at most 1e8 of its own sizes from the origin
+    assume(all(void.size > 0.03 * away / 1e6 * size for void in outline.voids))
     there = outline.rotated(angle).mirrored(0.3).translated(away * size, -0.5 * away * size)
     moved = tf.solve_torsion(there, **QUICK)
     # a million sizes from the origin, a coordinate keeps ten digits of the size
@@ -63,7 +65,7 @@ def test_motion_reflection_and_scale(outline, angle, away, scale):
 
 
 @few
-@given(outlines(), st.integers(-18, 18))
+@given(outlines(), st.integers(-20, 20))
 def test_powers_of_two_change_no_digit(outline, power):
     scale = math.ldexp(1.0, power)
     here, there = (tf.solve_torsion(o, rel_tol=1e-2, peak_tol=0.1) for o in (outline, outline.scaled(scale)))
