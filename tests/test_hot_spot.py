@@ -1,0 +1,136 @@
+"""The peak of a stress that is known: written onto the sides of a real mesh, so that place, height and doubt are."""
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+
+from torsionfe.mesh.bisect import bisect
+from torsionfe.mesh.triangulate import triangulate
+from torsionfe.outline import shapes
+from torsionfe.torsion.boundary import boundary_stress
+from torsionfe.torsion.fields import solve_fields
+from torsionfe.torsion.hot_spot import find_peaks, heights, plateau_share, tied_peaks
+
+WIDTH, HEIGHT = 40.0, 25.0
+
+
+def boundary(order=2, outline=None):
+    mesh = triangulate(outline or shapes.rectangle(WIDTH, HEIGHT))
+    for _ in range(6):  # eight sides an edge
+        mesh, _ = bisect(mesh, np.ones(len(mesh.triangles), dtype=bool))
+    fields = solve_fields(mesh, order)
+    return boundary_stress(fields.space, fields.omega)
+
+
+def written(stress, law, noise=0.0):
+    """Return the stress with ``law(edge, position)`` for its values, and a sawtooth of samples added."""
+    edge = np.broadcast_to(stress.edge[:, None], stress.tau.shape)
+    wobble = noise * np.where(np.arange(stress.tau.size) % 2, 1.0, -1.0).reshape(stress.tau.shape)
+    return replace(stress, tau=law(edge, stress.position) + wobble)
+
+
+def bump(edge, position, at=0.37, on=2, low=0.1, steep=2.0):
+    """A parabola of height 1 on one edge, ``at`` a share of its length; a low ramp on the others."""
+    length = np.where(edge % 2 == 0, WIDTH, HEIGHT)
+    share = position / length
+    return np.where(edge == on, 1.0 - steep * (share - at) ** 2, low + 0.01 * share)
+
+
+@pytest.mark.parametrize("order", [2, 3])
+@pytest.mark.parametrize("at", [0.13, 0.37, 0.5, 0.81])
+def test_the_top_of_a_parabola_is_found_where_it_is(order, at):
+    stress = written(boundary(order), lambda e, s: bump(e, s, at))
+    peak = find_peaks(stress)
+    assert peak.tau[0] == pytest.approx(1.0, rel=1e-4)
+    corner, along = stress.mesh.edges.start[2], stress.mesh.edges.end[2] - stress.mesh.edges.start[2]
+    # the fit is read at 64 steps of its side
+    assert peak.points[0] == pytest.approx(corner + at * along, abs=peak.size[0] / 100.0)
+    assert stress.edge[peak.side[0]] == 2
+    begins = stress.start[peak.side[0]]
+    assert begins - 1e-9 <= at * WIDTH <= begins + stress.length[peak.side[0]] + 1e-9
+
+
+def test_the_doubt_is_no_less_than_what_the_samples_disagree_by_nor_than_the_rise_above_them():
+    plain = boundary(2)
+    smooth, rough = (find_peaks(written(plain, bump, noise)) for noise in (0.0, 0.02))
+    assert smooth.doubt[0] < 0.01
+    assert rough.doubt[0] > 0.008
+    # samples on one parabola leave no scatter, but its top between them is a guess still
+    stress = written(plain, lambda e, s: bump(e, s, steep=40.0))
+    peak = find_peaks(stress)
+    sampled = np.abs(stress.tau[peak.side[0]]).max()
+    assert peak.tau[0] - sampled > 1e-3
+    assert peak.doubt[0] >= 0.5 * (peak.tau[0] - sampled) / peak.tau[0] * (1.0 - 1e-9)
+
+
+def test_a_stress_the_other_way_round_has_the_same_peak():
+    stress = boundary(2)
+    one, other = (find_peaks(written(stress, lambda e, s, sign=sign: sign * bump(e, s))) for sign in (1.0, -1.0))
+    assert one.tau[0] == other.tau[0]
+    assert np.array_equal(one.points, other.points)
+
+
+def test_heights_are_those_of_peaks():
+    stress = written(boundary(2), bump)
+    peak = find_peaks(stress)
+    assert heights(stress, peak.side) == pytest.approx(peak.tau, rel=1e-12)
+
+
+def two_bumps(second):
+    def law(edge, position):
+        return np.maximum(bump(edge, position, at=0.37, on=2), second * bump(edge, position, at=0.6, on=0))
+
+    return law
+
+
+def test_peaks_are_sorted_and_those_well_below_the_largest_are_left_out():
+    stress = boundary(2)
+    near = find_peaks(written(stress, two_bumps(0.99)))
+    assert len(near.tau) == 2
+    assert near.tau == pytest.approx([1.0, 0.99], rel=1e-3)
+    assert stress.edge[near.side].tolist() == [2, 0]
+    assert len(find_peaks(written(stress, two_bumps(0.96))).tau) == 1
+
+
+def test_ties_are_peaks_equal_within_their_error():
+    stress = written(boundary(2), two_bumps(0.99))
+    peak = find_peaks(stress)
+    assert len(tied_peaks(stress, peak, np.array([0.002, 0.002]))) == 1
+    assert len(tied_peaks(stress, peak, np.array([0.02, 0.02]))) == 2
+
+
+def test_two_tops_of_one_high_stretch_are_one_place():
+    """A wavy stress that never falls below the tie between its tops has one hot spot, across the loop's start too."""
+    stress = boundary(2, shapes.rectangle(WIDTH, HEIGHT, corner_radius=6.0))
+    total = np.concatenate([[0.0], np.cumsum(stress.mesh.edges.length)])
+
+    def around(edge, position):
+        return (total[edge] + position) / total[-1]
+
+    def wavy(edge, position):
+        return 1.0 - 0.004 * np.sin(3.0 * np.pi * around(edge, position)) ** 2
+
+    stress = written(stress, wavy)
+    peak = find_peaks(stress)
+    assert len(peak.tau) >= 2
+    assert len(tied_peaks(stress, peak, np.full(len(peak.tau), 0.004))) == 1
+    # with less to spare, the stretches between the tops fall below it, and each top is a place of its own
+    deep = written(stress, lambda e, s: 1.0 - 0.015 * np.sin(3.0 * np.pi * around(e, s)) ** 2)
+    peak = find_peaks(deep)
+    assert len(tied_peaks(deep, peak, np.full(len(peak.tau), 1e-4))) == 3
+
+
+def test_plateau_share_counts_lengths():
+    stress = boundary(2)
+    high = stress.edge == 1
+    flat = replace(stress, tau=np.where(high[:, None], 1.0, 0.5) * np.ones_like(stress.tau))
+    assert plateau_share(flat, 1.0) == pytest.approx(HEIGHT / (2.0 * (WIDTH + HEIGHT)), rel=1e-9)
+    assert plateau_share(flat, 0.5) == 1.0
+
+
+def test_no_stress_no_peak():
+    stress = boundary(1)
+    peak = find_peaks(replace(stress, tau=np.zeros_like(stress.tau)))
+    assert len(peak.tau) == len(peak.points) == 0
+    assert tied_peaks(stress, peak, np.empty(0)) == []
