@@ -400,6 +400,47 @@ def test_corner_stress_where_another_wall_is_near(gap):
         assert abs(coarse.intensity / fine.intensity - 1.0) <= coarse.rel_error < 0.5
 
 
+def lens_void(degrees):
+    """A square plate with a void between two arcs of so many degrees: both ends are sharp, between concave flanks."""
+    bulge = np.tan(np.radians(degrees) / 4.0)
+    void = Outline([(-0.4, 0.0), (0.4, 0.0)], [bulge, bulge])
+    return Outline([(-1, -1), (1, -1), (1, 1), (-1, 1)], voids=[void])
+
+
+def two_discs(half):
+    """Two discs of radius 1 joined, their centres ``half`` to each side: sharp corners between convex flanks."""
+    y = np.sqrt(1.0 - half**2)
+    bulge = np.tan(0.5 * (np.pi - np.arctan2(y, half)))
+    return Outline([(0.0, -y), (0.0, y)], [bulge, bulge])
+
+
+def half_curved():
+    """A square plate notched between a straight flank and an arc."""
+    bulge = np.tan(np.radians(70.0) / 4.0)
+    return Outline([(0, 0), (2, 0), (2, 2), (1, 1), (0, 2)], [0, 0, bulge, -bulge, 0])
+
+
+CURVED = [two_discs(0.25), two_discs(0.6), two_discs(0.9), lens_void(30), lens_void(100), lens_void(160), half_curved()]
+
+
+@pytest.mark.parametrize("outline", CURVED)
+def test_corner_stress_between_arcs_is_within_its_error(outline):
+    coarse, fine = (tf.solve_torsion(outline, *how, peak_tol=1.0) for how in ((1e-2, 2), (1e-5, 3)))
+    for rough, sure in zip(coarse.corner_stresses, fine.corner_stresses, strict=True):
+        assert abs(rough.intensity / sure.intensity - 1.0) <= rough.rel_error < 0.35
+        assert sure.rel_error < 2e-4
+
+
+@pytest.mark.parametrize("outline", [outline for outline in CURVED if outline is not CURVED[5]])  # (peaks elsewhere)
+def test_a_small_fillet_between_arcs_reads_what_the_corner_foretold(outline):
+    # beside an answer that does not come from the corner's own formula
+    sharp = tf.solve_torsion(outline, 1e-4, 3, peak_tol=1.0).corner_stresses[0]
+    rounded = tf.solve_torsion(outline.filleted(1e-3), peak_tol=1e-3)
+    near = np.hypot(rounded.hot_spot.x - sharp.x, rounded.hot_spot.y - sharp.y)
+    assert min(near, np.hypot(rounded.hot_spot.x + sharp.x, rounded.hot_spot.y + sharp.y)) < 0.01
+    assert sharp.peak_with_fillet(1e-3) == pytest.approx(rounded.hot_spot.stress_per_torque, rel=0.01)
+
+
 @pytest.mark.parametrize("degrees", [200, 270, 330])
 def test_a_small_fillet_reads_what_the_corner_foretold(degrees):
     sharp = tf.solve_torsion(sector(1.0, degrees), peak_tol=1.0).corner_stresses[0]
