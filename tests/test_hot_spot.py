@@ -149,3 +149,22 @@ def test_no_stress_no_peak():
     peak = find_peaks(replace(stress, tau=np.zeros_like(stress.tau)))
     assert len(peak.tau) == len(peak.points) == 0
     assert tied_peaks(stress, peak, np.empty(0)) == []
+
+
+# --- the samples themselves --------------------------------------------------------------------------------
+
+ROUNDED = shapes.angle(62, 46, 13, root_radius=7, toe_radius=4)
+
+
+@pytest.mark.parametrize("order", [1, 2, 3])
+def test_samples_lie_where_their_arc_length_says(order):
+    fields = solve_fields(triangulate(ROUNDED), order)
+    stress = boundary_stress(fields.space, fields.omega)
+    share = stress.position / ROUNDED.edges.length[stress.edge][:, None]
+    edge = np.repeat(stress.edge, order)
+    assert stress.points.reshape(-1, 2) == pytest.approx(ROUNDED.edges.points(edge, share.ravel()), abs=1e-11)
+    # loop by loop, edge by edge, each side from where the one before it ends
+    joined = stress.edge[1:] == stress.edge[:-1]
+    ends = stress.start + stress.length
+    assert stress.start[1:] == pytest.approx(np.where(joined, ends[:-1], 0.0), abs=1e-11)
+    assert (np.diff(stress.position, axis=1) > 0.0).all()

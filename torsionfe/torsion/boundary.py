@@ -38,8 +38,6 @@ class BoundaryStress:
     points : ndarray of shape (s, g, 2)
     tau : ndarray of shape (s, g)
         Shear stress along the walking direction (length).
-    jump : ndarray of shape (s,)
-        Largest difference, at the side's ends, from the stress of the side before or after it on its edge.
     """
 
     mesh: TriMesh
@@ -50,7 +48,6 @@ class BoundaryStress:
     position: Floats
     points: Floats
     tau: Floats
-    jump: Floats
 
 
 def walking_order(mesh: TriMesh) -> Ints:
@@ -99,9 +96,5 @@ def boundary_stress(space: Space, omega: Floats) -> BoundaryStress:
     safe = np.where(half == 0.0, 1.0, half)
     bent = np.where(half == 0.0, gauss, 0.5 + np.arcsin((2.0 * gauss - 1.0) * np.sin(safe)) / (2.0 * safe))
     position = (span[:, :1] + np.diff(span, axis=1) * bent) * total[:, None]
-    ends, _, _ = along_sides(space, omega, sides, np.array([0.0, 1.0]))
-    joined = edge[1:] == edge[:-1]
-    step = np.where(joined, np.abs(ends[1:, 0] - ends[:-1, 1]), 0.0)
-    jump = np.maximum(np.append(step, 0.0), np.append(0.0, step))
     length = mesh.side_lengths[sides]
-    return BoundaryStress(mesh, sides, edge, span[:, 0] * total, length, position, points, tau, jump)
+    return BoundaryStress(mesh, sides, edge, span[:, 0] * total, length, position, points, tau)
