@@ -1,6 +1,6 @@
 """The same sections by a plain script on a general-purpose finite-element library, at equal accuracy.
 
-    python benchmarks/plain_script.py [--only WORD] [--most 300000]
+    python benchmarks/plain_script.py [--only WORD] [--most 100000]
 
 The library is scikit-fem; the script is what one writes with it in an afternoon: the outline as a polygon (arcs as
 chords of the mesh's size), a nearly uniform mesh, the stress function with linear or quadratic elements, one unknown
@@ -179,7 +179,7 @@ def _cells(theirs, own):
 def main() -> None:
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
     parser.add_argument("--only", default="")
-    parser.add_argument("--most", type=int, default=300_000, help="unknowns at which the plain script gives up")
+    parser.add_argument("--most", type=int, default=100_000, help="unknowns at which the plain script gives up")
     given = parser.parse_args()
     logging.getLogger("skfem").setLevel(logging.ERROR)
     rows, ratios = [], {1: [], 2: []}
