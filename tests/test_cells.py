@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+import re
 from pathlib import Path
 
 import numpy as np
@@ -218,6 +219,11 @@ def test_fins_add_their_own_constant_and_share_the_torque_by_stiffness():
     thick = cell_sum(ThinCells.single([(20.0, 1.0)] * 4, 400.0, [Plate(200.0, 60.0, "lug")]))
     assert thick.governing == "lug"
     assert thick.peak_stress(1.0) == thick.fin_stress(1.0)[0]
+    nameless = cell_sum(ThinCells.single([(20.0, 1.0)] * 4, 400.0, [Plate(9.0, 3.0, "small"), Plate(200.0, 60.0)]))
+    assert nameless.governing == "fin 1"
+    told = re.search(r"torsion constant +\S+, (\S+) % of it from the fins", str(nameless))
+    part = nameless.fin_sum.torsion_constant_twist / nameless.torsion_constant
+    assert float(told[1]) == pytest.approx(100.0 * part, rel=1e-2)
 
 
 def test_a_wall_in_pieces_is_the_wall():

@@ -16,7 +16,13 @@ from torsionfe.cautions import MARGINS
 from torsionfe.cli import main
 from torsionfe.errors import SolveError
 from torsionfe.job.reading import read_job
+from torsionfe.outline import shapes
+from torsionfe.outline.outline import Outline
+from torsionfe.outline.samples import SAMPLES
 from torsionfe.output.result_json import outline_of, result_schema
+from torsionfe.quantities import UnitSystem
+from torsionfe.study.single import answer
+from torsionfe.torsion.solve import solve_torsion
 
 QUICK = """
 title = "Plate \\u001b[31m"
@@ -268,3 +274,56 @@ def test_a_job_without_a_sweep(capsys, tmp_path):
     status, _, err = run(capsys, "sweep", path, "--out", tmp_path)
     assert status == 2
     assert "has no [sweep]" in err
+
+
+def test_sections_lists_what_solve_takes(capsys):
+    status, out, err = run(capsys, "sections")
+    assert (status, err) == (0, "")
+    assert [line.split()[0] for line in out.splitlines()[2:]] == list(SAMPLES)
+
+
+def test_sharp_corners_are_said_with_their_remedy_and_filleted_on_request(capsys, tmp_path):
+    path = tmp_path / "sharp.wkt"
+    path.write_text("POLYGON ((0 0, 60 0, 60 12, 12 12, 12 40, 0 40, 0 0))")
+    status, out, _ = run(capsys, "solve", path, "--rel-tol", "1e-2")
+    assert status == 0
+    assert re.search(r"sharp re-entrant corner +\(12, 12\): stress unbounded there; fillet it", out)
+    status, out, _ = run(capsys, "solve", path, "--rel-tol", "1e-2", "--fillet", "5")
+    assert status == 0
+    assert "sharp re-entrant" not in out
+    assert "peak shear stress" in out
+    status, _, err = run(capsys, "solve", path, "--fillet", "500")
+    assert status == 2
+    assert "500" in err
+
+
+def test_what_no_tolerance_was_met_within_and_equal_hot_spots_are_said(capsys, tmp_path):
+    twelve = Outline.from_polygon(shapes.regular(12, 40.0).polygon(0.01))
+    shown = str(answer(solve_torsion(twelve), UnitSystem("")))
+    assert "and at 8 more places" in shown
+    short = str(answer(solve_torsion(twelve, 1e-6, max_unknowns=300), UnitSystem("")))
+    assert re.search(r"NOT CONVERGED +the bracket of J is .* wide, not 1e-06.* within 300 unknowns", short)
+    # star of four deep notches: every flank rises into a sharp corner
+    star = Outline([(2, 0), (0.3, 0.3), (0, 2), (-0.3, 0.3), (-2, 0), (-0.3, -0.3), (0, -2), (0.3, -0.3)])
+    assert "none finite: every flank rises into a sharp re-entrant corner" in str(
+        answer(solve_torsion(star, peak_tol=1.0), UnitSystem(""))
+    )
+
+
+def test_results_that_cannot_be_printed_are_no_traceback(tmp_path):
+    with open("/dev/full", "w") as full:
+        done = subprocess.run(
+            [sys.executable, "-m", "torsionfe", "sections"], stdout=full, stderr=subprocess.PIPE, text=True, check=False
+        )
+    assert done.returncode == 1
+    assert done.stderr == "torsionfe: the results can't be printed: No space left on device\n"
+
+
+def test_a_sweep_with_too_many_values_draws_the_first_maps_and_says_so(capsys, job, tmp_path, monkeypatch):
+    monkeypatch.setattr("torsionfe.job.sweeping._MOST_SHEETS", 1)
+    text = job.read_text().replace("height = [5, 10]", "height = [5, 10]\ncorner_radius = [0, 1, 2]")
+    job.write_text(text.replace("figures = []", 'figures = ["svg"]') + '[sweep]\nmaps = ["area"]\n')
+    status, _, err = run(capsys, "sweep", job, "--out", tmp_path / "out")
+    assert status == 0
+    assert "maps: only the first 1 values of corner_radius are drawn" in err
+    assert [path.name for path in (tmp_path / "out").glob("*.svg")] == ["map_area_1.svg"]

@@ -204,6 +204,9 @@ def test_a_date_and_line_ends_of_any_kind(job):
 # --- what is wrong with it ----------------------------------------------------------------------------------
 
 #: Text, the line that is named, and what the message says.
+REGULAR = 'shape = "regular"\nsides = 6\nacross_flats = 20\n[sweep.grid]\n'
+FILLETED = 'shape = "angle"\nleg_x = 60\nleg_y = 40\nthickness = 5\nfillets = [{ radius = 2 }]\n'
+MILLION = "[sweep.grid]\nwidth = {from = 1, to = 2, count = 1002}\nheight = {from = 1, to = 2, count = 1002}"
 WRONG = [
     (FULL + 'titel = "y"', 4, "no key 'titel': did you mean 'title'?"),
     (LEAST + "outline = { shape = 'rectangle', width = 40, hight = 20 }", 3, "no key 'hight': did you mean 'height'?"),
@@ -293,6 +296,20 @@ WRONG = [
     (FULL + "[sweep.grid]\nwidth = [1, 1]", 5, "has a value twice"),
     (FULL + "[sweep.grid]\nwidth = {from = 1, to = 1, count = 3}", 5, "must differ"),
     (FULL + "[sweep.grid]\nwidth = {from = 1, count = 3}", 5, "needs 'to'"),
+    (FULL + "[sweep.grid]", 4, "sweep.grid is empty: name a dimension, one of width, height, corner_radius"),
+    (FULL + "[sweep.grid]\nwidth = []", 5, "sweep.grid.width must have 1 to"),
+    (FULL + "[sweep.grid]\nwidth = [1, true]", 5, "must be a number"),
+    (OUT + REGULAR + "sides = {from = 3, to = 5, count = 3}", 8, "sweep.grid.sides counts something: list its values"),
+    (OUT + REGULAR + 'sides = [3, "4"]', 8, "sides must be plain numbers, got '4'"),
+    (FULL + MILLION, 4, "sweep.grid has 1004004 sections; 1000000 at most"),
+    (OUT + FILLETED + "[sweep.grid]\nleg_x = [50, 60]", 9, "can't vary a shape with outline.fillets"),
+    (OUT + FILLETED.replace("2 }", "2, at = 9 }"), 8, "there is no vertex 9: the outer loop has 0 to 5"),
+    (OUT + FILLETED.replace("2 }", "2 }, { radius = 1 }"), 8, "only one radius can be without 'at'"),
+    (FULL + "[sheet]\nsections = [1]", 5, "text, or a list of texts"),
+    (FULL + "cases = 3", 4, "cases must be one table or more, [[cases]]"),
+    (FULL + "[compare]\nplates = [{width = 4, thickness = 2}]\nidealisations = ['shape']", 6, "no meaning beside"),
+    (LEAST + 'outline = {section = "sluice-lever"}\n[compare]\nplates = "shape"', 5, "needs outline.shape"),
+    (FULL + "[[cases]]\nat = [{ station = 1, torque = 450 }]", 4, "torques at stations need a [bar]"),
     (LEAST + 'outline = {section = "gate-beam"}\n[sweep.grid]\ndepth = [1]', 4, "set outline.shape"),
     (LEAST + 'folders = ["nowhere"]\n' + BOX, 3, "there is no folder 'nowhere'"),
     (FULL + "x = [", 4, "no valid TOML"),

@@ -183,3 +183,24 @@ def test_undecided_cells_are_marked_in_maps_too_large_for_numbers():
     assert mark.get_text() == "?"
     assert mark.get_position() == (5.5, 3.5)
     assert "limit undecided" in [text.get_text() for text in drawn.axes.get_legend().get_texts()]
+
+
+@pytest.mark.parametrize(
+    ("found", "options", "said"),
+    [
+        (3, {}, "a HandRange is needed, got int"),
+        (made_up([[0.1, 0.2]]), {"limits": (0.1, 0.05)}, "two rising ratios above 0"),
+        (made_up([[0.1, 0.2]]), {"judged": "mass"}, "judged must be of"),
+        (made_up([[0.1]]), {}, "one or two dimensions must vary to be drawn; here vary: none"),
+        (made_up([[math.nan, math.nan]] * 2), {}, "no section has an error of .* to draw"),
+    ],
+)
+def test_ranges_that_cannot_be_drawn_say_why(found, options, said):
+    with pytest.raises(InputError, match=said):
+        plot_range(found, **options)
+
+
+def test_a_curve_leaves_out_what_has_no_answer_and_prints_its_failures():
+    drawn = plot_range(made_up([[0.1, math.nan, 0.3]]))
+    assert drawn.axes.get_xlabel().startswith("thickness")
+    assert repr(made_up([[0.1, 0.2]])) == "<HandRange of 2 sections over leg_x, leg_y, thickness, root_radius>"

@@ -258,6 +258,21 @@ def test_a_worker_that_dies_costs_its_own_task_alone():
         crew.submit(abs, -1)
 
 
+@pytest.mark.parametrize("workers", [0, -1, True, 1.5])
+def test_a_crew_needs_a_whole_number_of_workers(workers):
+    with pytest.raises(InputError, match="workers must be a whole number above 0"):
+        Crew(workers)
+
+
+def test_a_crew_that_is_shut_down_drops_what_waits_if_asked():
+    with Crew(1) as crew:
+        busy = crew.submit(time.sleep, 0.3)
+        waiting = [crew.submit(abs, -k) for k in range(5)]
+        crew.shutdown(cancel_futures=True)
+        assert busy.done()
+        assert sum(future.cancelled() for future in waiting) >= 4
+
+
 def test_a_containers_share_of_the_cores_counts(tmp_path, monkeypatch):
     from torsionfe.study import crew
 

@@ -13,6 +13,7 @@ from torsionfe.mesh.triangulate import triangulate
 from torsionfe.outline import shapes
 from torsionfe.outline.outline import Outline
 from torsionfe.torsion.fields import solve_fields
+from torsionfe.torsion.warping import dof_points, normalised_warping
 
 SLUICE_LEVER = shapes.angle(62, 46, 13, root_radius=7, toe_radius=4)
 
@@ -137,6 +138,18 @@ def test_motion_and_reflection_change_nothing(moved):
     assert other.torsion_constant.upper >= one.torsion_constant.lower
     assert other.section_modulus == pytest.approx(one.section_modulus, rel=2 * one.hot_spot.rel_error)
     assert other.warping_constant == pytest.approx(one.warping_constant, rel=1e-3)
+
+
+def test_the_normalised_warping_of_an_ellipse_is_that_of_its_own_axes_wherever_it_lies():
+    # omega = -(a^2 - b^2) / (a^2 + b^2) x y about the middle (Timoshenko and Goodier, art. 106)
+    a, b, middle = 30.0, 18.0, np.array([70.0, -25.0])
+    fields = solve_fields(uniform(triangulate(shapes.ellipse(2 * a, 2 * b).translated(*middle)), 2), 3)
+    x, y = (dof_points(fields) - middle).T
+    exact = -(a**2 - b**2) / (a**2 + b**2) * x * y
+    warping = normalised_warping(fields)
+    assert warping.omega == pytest.approx(exact, abs=1e-4 * np.ptp(exact))
+    most = (a**2 - b**2) / (a**2 + b**2) * a * b / 2.0
+    assert warping.extremes == pytest.approx((-most, most), rel=1e-2)
 
 
 def test_the_centre_of_twist_moves_with_the_section():
