@@ -727,3 +727,45 @@ def test_drawings_of_too_many_entries(tmp_path):
     path.write_text(bare(*([(0, "POINT"), (8, "0"), (10, k), (20, k)] for k in range(1000))))
     with pytest.raises(ReadError, match="entries, above the limit of 800"):
         read_outline(path, max_edges=200)
+
+
+# --- curves and blocks that cannot be ------------------------------------------------------------------------
+
+
+def spline_of_a_high_degree(space, _):
+    space.add_spline(dxfattribs={"degree": 60}).control_points = [(k, k * k, 0) for k in range(70)]
+
+
+def spline_with_a_knot_missing(space, _):
+    spline = space.add_open_spline([(0, 0), (1, 2), (3, 1), (4, 4)])
+    spline.knots = [0, 0, 0, 0, 1, 1, 1]
+
+
+def spline_with_falling_knots(space, _):
+    spline = space.add_open_spline([(0, 0), (1, 2), (3, 1), (4, 4)])
+    spline.knots = [0, 0, 0, 0, -1, 1, 1, 1]
+
+
+def spline_with_a_weight_of_nought(space, _):
+    space.add_rational_spline([(0, 0), (1, 2), (3, 1), (4, 4)], weights=[1, 1, 0, 1])
+
+
+def a_block_that_is_not_there(space, _):
+    space.add_blockref("NOWHERE", (0, 0))
+
+
+@pytest.mark.parametrize(
+    ("make", "words"),
+    [
+        (spline_of_a_high_degree, "SPLINE has the degree 60: 1 to|damaged"),
+        (spline_with_a_knot_missing, "knots that do not fit its points|damaged"),
+        (spline_with_falling_knots, "knots that do not fit its points|damaged"),
+        (spline_with_a_weight_of_nought, "a weight of 0 or less|damaged"),
+        (a_block_that_is_not_there, "the block 'NOWHERE' is not in the drawing|damaged"),
+    ],
+)
+def test_curves_and_blocks_that_cannot_be_are_told(drawing, make, words):
+    document, space = new("mm")
+    make(space, document)
+    with pytest.raises(ReadError, match=words):
+        read_outline(drawing(document))
