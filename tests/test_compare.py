@@ -14,6 +14,7 @@ from torsionfe.quantities import UnitSystem
 from torsionfe.study.compare import compare
 from torsionfe.study.hand import hand_methods
 from torsionfe.study.single import answer
+from torsionfe.text import number
 
 LEVER = shapes.angle(62.0, 46.0, 13.0, root_radius=7.0, toe_radius=4.0)
 
@@ -215,6 +216,26 @@ def test_it_prints_writes_and_shows_itself(lever):
     assert "<svg" in page
     assert "<i>" not in page
     assert "a|b &lt;i&gt;" in page
+
+
+@pytest.mark.parametrize("torque", [None, 450e3, -450e3])
+def test_stresses_and_twists_are_those_of_the_torque(lever, torque):
+    comparison = compare(lever, LEVER.plates(), torque=torque, shear_modulus=79e3, length=600.0)
+    head, (solved, by_hand) = comparison.as_table()
+    solved, by_hand = (dict(zip(head, row, strict=True)) for row in (solved, by_hand))
+    times = 1.0 if torque is None else abs(torque)
+    hand = tf.plate_sum(LEVER.plates())
+    assert solved["peak stress"] == pytest.approx(times * lever.hot_spot.stress_per_torque, rel=1e-12)
+    assert by_hand["peak stress"] == pytest.approx(hand.peak_stress(times).max(), rel=1e-12)
+    text = str(comparison)
+    assert number(solved["peak stress"]) in text
+    assert number(by_hand["peak stress"]) in text
+    if torque is None:
+        assert math.isnan(solved["twist"])
+        return
+    assert solved["twist"] == pytest.approx(tf.Bar(lever, 600.0, 79e3).twist(torque), rel=1e-12)
+    assert by_hand["twist"] == pytest.approx(torque * 600.0 / (79e3 * hand.torsion_constant_twist), rel=1e-12)
+    assert number(by_hand["twist"]) in text
 
 
 def test_the_figure_shows_every_method_and_its_side(lever):
