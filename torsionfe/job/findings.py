@@ -77,7 +77,7 @@ def constant(result: JobResult) -> SheetSection:
     )
     caption = "The bounds of J and the error of the peak stress as the mesh was refined."
     picture = Picture("convergence", caption, lambda canvas: _draw_convergence(canvas, result), 0.41)
-    return SheetSection("Torsion constant", (Beside((Facts(rows), Cells(head, passes)), (picture,), 0.44),))
+    return SheetSection("Torsion constant", (Beside((Facts(rows), Cells(head, passes)), (picture,), 0.48),))
 
 
 def _draw_convergence(canvas: Any, result: JobResult) -> None:

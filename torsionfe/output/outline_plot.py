@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -125,7 +125,7 @@ def plot_outline(
     ax.set_aspect("equal")
     x0, y0, x1, y1 = outline.bounds
     margin = 0.1 * outline.size
-    behind = 2.2 * margin if dimensions else margin
+    behind = 2.9 * margin if dimensions else margin
     ax.set_xlim(x0 - behind, x1 + margin)
     ax.set_ylim(y0 - behind, y1 + margin)
     label_axes(ax, unit)
@@ -182,7 +182,8 @@ def _draw_dimensions(ax: Axes, outline: Outline, unit: str) -> tuple[Text, ...]:
     ax.annotate("", (x1, y), (x0, y), arrowprops=arrow)
     ax.annotate("", (x, y1), (x, y0), arrowprops=arrow)
     wide, high = (f"{number(value, 5)} {unit}".strip() for value in (x1 - x0, y1 - y0))
+    beyond: dict[str, Any] = {"textcoords": "offset points", "color": QUIET}  # of the line, where no vertex numbers are
     return (
-        ax.text(0.5 * (x0 + x1), y, wide, ha="center", va="bottom", color=QUIET),
-        ax.text(x, 0.5 * (y0 + y1), high, ha="right", va="center", rotation=90, color=QUIET),
+        ax.annotate(wide, (0.5 * (x0 + x1), y), (0.0, -2.0), **beyond, ha="center", va="top"),
+        ax.annotate(high, (x, 0.5 * (y0 + y1)), (-2.0, 0.0), **beyond, ha="right", va="center", rotation=90),
     )

@@ -261,19 +261,22 @@ def _cell_slabs(block: Cells, width: float, size: float) -> list[_Slab]:
 def _columns(rows: Sequence[Sequence[str]], width: float, size: float) -> tuple[list[float], float]:
     """Return the widths of a table's columns, as its cells need, the widest narrowed until all fit; and their gap."""
     count = len(rows[0])
-    need = [
-        max(max(_width(line, size) for line in legible(row[k]).split("\n")) for row in rows) + 0.5 for k in range(count)
-    ]
+    columns = [[legible(row[k]) for row in rows] for k in range(count)]
+    need = [max(_width(line, size) for cell in column for line in cell.split("\n")) + 0.5 for column in columns]
     gap = min(_WIDE_GAP, max(_NARROW_GAP, (width - sum(need)) / max(count - 1, 1)))
     room = width - gap * (count - 1)
     if sum(need) <= room + 1e-6:
         return need, gap
+    # a column keeps its longest word whole where all of them can
+    least = [max((_width(word, size) for cell in column for word in cell.split()), default=0.0) for column in columns]
+    least = [word + 0.5 for word in least] if sum(least) + 0.5 * count < room else [0.0] * count
     # a common limit on all columns, by halving
-    low, high = room / count, max(need)
+    low, high = 0.0, max(need)
     for _ in range(40):
         middle = 0.5 * (low + high)
-        low, high = (middle, high) if sum(min(n, middle) for n in need) <= room else (low, middle)
-    return [min(n, low) for n in need], gap
+        fits = sum(max(word, min(n, middle)) for n, word in zip(need, least, strict=True)) <= room
+        low, high = (middle, high) if fits else (low, middle)
+    return [max(word, min(n, low)) for n, word in zip(need, least, strict=True)], gap
 
 
 def _line_slabs(block: Lines, width: float, size: float) -> list[_Slab]:
