@@ -12,7 +12,7 @@ from torsionfe.torsion.boundary import BoundaryStress
 from torsionfe.torsion.corners import exponents
 from torsionfe.torsion.fields import Fields
 
-__all__ = ["around_peaks", "refined"]
+__all__ = ["around_peaks", "from_afar", "refined"]
 
 _ROUNDS = 6  # bisections of one triangle in one pass
 _AIM = 0.85  # of the gap that is wanted
@@ -109,3 +109,23 @@ def around_peaks(stress: BoundaryStress, sides: Ints, rounds: Ints) -> Ints:
     # one layer more, one bisection less: what is left coarse nearby would set the value that the peak settles on
     np.maximum.at(wanted, mesh.triangles.ravel(), np.repeat(here - 1, 3))
     return np.asarray(wanted[mesh.triangles].max(axis=1))
+
+
+def from_afar(influence: Floats, wanted: float) -> Ints:
+    """Return how often to bisect each triangle (m,) so that little of its error reaches the peaks.
+
+    Parameters
+    ----------
+    influence : ndarray of shape (k, m)
+        How much of each peak's relative error may come from each triangle.
+    wanted : float
+        Relative error that is wanted of each peak.
+    """
+    rounds = np.zeros(influence.shape[1], dtype=np.int64)
+    for reach in influence:
+        if reach.sum() > wanted:
+            rising = np.sort(reach)
+            # what is left alone may bring half of it; two bisections take the others to a sixteenth (order 2) or so
+            least = rising[np.searchsorted(np.cumsum(rising), 0.5 * wanted)]
+            rounds[reach >= least] = 2
+    return rounds

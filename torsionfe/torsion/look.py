@@ -12,6 +12,7 @@ from torsionfe.torsion.boundary import BoundaryStress, boundary_stress
 from torsionfe.torsion.bounds import Bounds
 from torsionfe.torsion.fields import Fields, solve_fields
 from torsionfe.torsion.hot_spot import Peak, find_peaks
+from torsionfe.torsion.pollution import POLLUTION, influence
 
 __all__ = ["OF_GAP", "Look", "Seen", "look_at"]
 
@@ -21,6 +22,8 @@ _CAUTION = 1.6
 _OF_CHANGE = 0.7
 #: On meshes of a few elements samples may agree by accident: no less than this many times the bracket's square.
 OF_GAP = 2.0
+#: The largest so many peaks are asked what reaches them from elsewhere; the others are taken to be like them.
+_ASKED = 8
 
 
 @dataclass(frozen=True)
@@ -34,12 +37,15 @@ class Look:
     peak : Peak
     rel_error : ndarray of shape (k,)
         Estimated relative error of each peak.
+    influence : ndarray of shape (min(k, 8), m)
+        How much of the largest peaks' error may come from each triangle, relative to the peak.
     """
 
     fields: Fields
     boundary: BoundaryStress
     peak: Peak
     rel_error: Floats
+    influence: Floats
 
 
 @dataclass(frozen=True)
@@ -56,7 +62,11 @@ def look_at(mesh: TriMesh, order: int, before: Seen | None) -> Look:
     boundary = boundary_stress(fields.space, fields.omega)
     peak = find_peaks(boundary)
     coarse = OF_GAP * Bounds(fields.lower, fields.upper).rel_gap ** 2
-    return Look(fields, boundary, peak, np.maximum(_peak_error(peak, before, order), coarse))
+    reach = POLLUTION * influence(fields, peak.points[:_ASKED]) / peak.tau[:_ASKED, None]
+    least = reach.sum(axis=1)
+    least = np.append(least, np.full(len(peak.tau) - len(least), least.max(initial=0.0)))
+    error = np.maximum(np.maximum(_peak_error(peak, before, order), coarse), least)
+    return Look(fields, boundary, peak, error, reach)
 
 
 def _peak_error(peak: Peak, before: Seen | None, order: int) -> Floats:

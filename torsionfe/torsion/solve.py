@@ -9,7 +9,7 @@ import numpy as np
 from torsionfe.checks import Ints, positive
 from torsionfe.errors import InputError
 from torsionfe.outline.outline import Outline
-from torsionfe.torsion.adaptive import around_peaks, refined
+from torsionfe.torsion.adaptive import around_peaks, from_afar, refined
 from torsionfe.torsion.bounds import Bounds
 from torsionfe.torsion.frame import Frame
 from torsionfe.torsion.look import OF_GAP, Look, Seen, look_at
@@ -126,7 +126,8 @@ def _forced(look: Look, wanted: float) -> Ints:
     # the error of the samples falls about as h**(p + 1), and two rounds halve every side
     ratio = np.minimum(look.rel_error[open_], 1.0) / wanted
     rounds = 2 * np.clip(np.ceil(np.log2(ratio) / (look.fields.space.order + 1)), 1, 2).astype(np.int64)
-    return around_peaks(look.boundary, look.peak.side[open_], rounds)
+    near = around_peaks(look.boundary, look.peak.side[open_], rounds)
+    return np.maximum(near, from_afar(look.influence[open_[: len(look.influence)]], wanted))
 
 
 def _pass(look: Look, frame: Frame) -> Pass:
