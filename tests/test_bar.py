@@ -15,6 +15,7 @@ from torsionfe.errors import InputError
 from torsionfe.member.bar import Bar, SteppedBar, TorqueCase
 from torsionfe.member.margins import Allowables, margins, torque_limits
 from torsionfe.outline import shapes
+from torsionfe.text import number
 from torsionfe.torsion.bounds import Bounds
 
 G = 80e3
@@ -129,6 +130,12 @@ def test_torques_at_stations_make_the_diagram():
     assert middle.twists[2] == 0.0
     assert middle.twists[0] == pytest.approx(stepped.segments[0].twist(1e4) + stepped.segments[1].twist(3e4))
     assert middle.reactions == {2: pytest.approx(-6e4)}
+    lines = str(middle).splitlines()
+    for k, (begin, end) in enumerate([("0", "200"), ("200", "500"), ("500", "600")]):
+        words = lines[4 + k].split()
+        assert begin in words
+        assert words[words.index(begin) + 1 : words.index(begin) + 3] == [end, number(middle.torques[k], 6)]
+        assert f" {number(middle.twists[k + 1])} rad " in lines[4 + k]
 
 
 def test_held_at_both_ends():
