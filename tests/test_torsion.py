@@ -239,6 +239,13 @@ def test_stress_outside_is_refused(point):
         tf.solve_torsion(SLUICE_LEVER).stress_at([point])
 
 
+def test_one_point_may_come_alone():
+    solution = tf.solve_torsion(SLUICE_LEVER, 1e-2, peak_tol=1.0)
+    alone, listed = solution.stress_at((6.0, 20.0), 3.0), solution.stress_at([(6.0, 20.0), (30.0, 6.0)], 3.0)
+    assert alone.shape == (1, 2)
+    assert alone[0].tolist() == listed[0].tolist()
+
+
 def test_stress_in_a_void_is_refused():
     solution = tf.solve_torsion(shapes.tube(50, 3))
     with pytest.raises(tf.InputError, match=r"points\[1\] = \(0, 0\)"):
@@ -454,11 +461,11 @@ def test_a_small_fillet_between_arcs_reads_what_the_corner_foretold(outline):
     assert sharp.peak_with_fillet(1e-3) == pytest.approx(rounded.hot_spot.stress_per_torque, rel=0.01)
 
 
-@pytest.mark.parametrize("degrees", [200, 270, 330])
+@pytest.mark.parametrize("degrees", [186, 195, 200, 210, 225, 240, 255, 270, 285, 300, 315, 330, 345])
 def test_a_small_fillet_reads_what_the_corner_foretold(degrees):
     sharp = tf.solve_torsion(sector(1.0, degrees), peak_tol=1.0).corner_stresses[0]
     rounded = tf.solve_torsion(sector(1.0, degrees).filleted(3e-3)).hot_spot
-    assert np.hypot(rounded.x, rounded.y) < 0.01
+    assert np.hypot(rounded.x, rounded.y) < 0.03  # a narrow notch holds its fillet farther out
     assert sharp.peak_with_fillet(3e-3) == pytest.approx(rounded.stress_per_torque, rel=0.01)
 
 
