@@ -363,3 +363,12 @@ def test_any_perforated_plate(holes):
         voids.append(disc(share, k % 3 + 0.5 + slack * dx, k // 3 + 0.5 + slack * dy))
     outline = made([(0, 0), (3, 0), (3, 3), (0, 3)], None, voids)
     check_mesh(triangulate(outline), outline)
+
+
+def test_a_detail_at_the_end_of_rounding_is_refused_with_its_place():
+    # an arc of 3e-7 of the size: two nodes fall on one place, which once was a division by zero
+    vertices = [(0.0, 0.0), (0.5, 0.0), (0.5000003048055872, 0.0), (1.0, 0.0), (1.0, 1.0), (0.0, 1.0)]
+    outline = Outline(vertices, [0.0, 0.6681610954194896, 0.0, 0.0, 0.0, -0.25068742734314553])
+    with pytest.raises(MeshError, match=r"no mesh near \(0\.5, .*thicken the wall, or drop the detail") as caught:
+        triangulate(outline)
+    assert caught.value.at == pytest.approx((0.5, 0.0), abs=1e-6)

@@ -175,6 +175,8 @@ def _bad_triangles(draft: Draft, web: Web, kept: Ints, side_at: Ints) -> tuple[I
     short = np.argmin(length2, axis=1)
     count = np.arange(len(kept))
     least = length2[count, short]
+    if not least.all():
+        raise _failure(draft, p[np.argmin(least), 0], "rounding lays two nodes on one place")
     others = length2.prod(axis=1) / least
     double = cross(opposite[:, 0], opposite[:, 1])
     bad = np.flatnonzero(double**2 < np.sin(SMALLEST_ANGLE) ** 2 * others)
