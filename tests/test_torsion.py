@@ -506,3 +506,15 @@ def test_a_peak_is_no_surer_where_its_mesh_is_no_finer():
     # the change since the last mesh counts 0.7 times, and that with a caution of 1.6
     assert _peak_error(peak(0.1, 1.1), before, 2)[0] == pytest.approx(1.6 * 0.7 * 0.1 / 1.1)
     assert _peak_error(peak(0.4), None, 2)[0] == 1.0
+
+
+def test_far_from_the_origin_a_tube_is_bounded_as_its_own_vertices_say():
+    # 5e7 sizes away a coordinate keeps eight digits of the size, but J of what was drawn is known to all of its own
+    far = shapes.tube(1.1514, 0.0305462).rotated(0.7).translated(48758818.8, -34131173.2)
+    bounds = tf.solve_torsion(far, 1e-9, 4, peak_tol=1.0).torsion_constant
+    middle = far.vertices.mean(axis=0)
+    near = Outline(far.vertices - middle, far.bulges, [Outline(v.vertices - middle, v.bulges) for v in far.voids])
+    same = tf.solve_torsion(near, 1e-9, 4, peak_tol=1.0).torsion_constant
+    assert bounds.value == pytest.approx(same.value, rel=1e-12)
+    # warping only softens (Saint-Venant)
+    assert bounds.lower <= far.edges.moments()[2][:2].sum() * (1.0 + 1e-12)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -94,11 +94,12 @@ class Edges:
             ``int y^2, int x^2, int x y`` about the centroid, length**4.
         """
         origin = self.start.mean(axis=0)
+        near = replace(self, start=self.start - origin, end=self.end - origin)  # where points keep their digits
         t = 0.5 * (_GAUSS_X + 1.0)
         rows = np.repeat(np.arange(len(self)), len(t))
         ts = np.tile(t, len(self))
-        x, y = (self.points(rows, ts) - origin).T
-        step = self.tangents(rows, ts) * (0.5 * np.tile(_GAUSS_W, len(self)) * self.length[rows])[:, None]
+        x, y = near.points(rows, ts).T
+        step = near.tangents(rows, ts) * (0.5 * np.tile(_GAUSS_W, len(self)) * near.length[rows])[:, None]
         dx, dy = step.T
         area = 0.5 * float(np.sum(x * dy - y * dx))
         cx, cy = float(np.sum(x * x * dy)) / (2.0 * area), float(np.sum(-y * y * dx)) / (2.0 * area)

@@ -49,8 +49,14 @@ class Frame:
         return np.asarray(points * self.scale + self.origin, dtype=float)
 
     def inward(self, mesh: TriMesh) -> TriMesh:
-        """Return a mesh of the outline in the solver's coordinates."""
-        return _moved(mesh, self.inward_points)
+        """Return a mesh of the outline in the solver's coordinates, its boundary nodes on the arcs to the last digit.
+
+        Far from the origin, coordinates are coarse: nodes computed there lie beside the arcs through the vertices.
+        """
+        moved = _moved(mesh, self.inward_points)
+        nodes = moved.nodes.copy()
+        nodes[mesh.sides[:, 0]] = moved.edges.points(mesh.side_edge, mesh.side_span[:, 0])
+        return replace(moved, nodes=nodes)
 
     def outward(self, mesh: TriMesh) -> TriMesh:
         """Return a mesh of the solver in the outline's coordinates."""
