@@ -18,7 +18,7 @@ from torsionfe.errors import TorsionError
 from torsionfe.torsion.solve import solve_torsion
 
 sys.path.insert(0, str(Path(__file__).parents[1] / "tests"))
-from random_outlines import KINDS, random_outline
+from random_outlines import mixed_outline
 
 FINE = {"rel_tol": 3e-6, "order": 3, "peak_tol": math.inf}
 SETTINGS = [
@@ -32,9 +32,8 @@ def outlines(count, seed):
     """Yield random outlines with sharp re-entrant corners."""
     found = 0
     while found < count:
-        kind = "arcs" if seed % 2 else KINDS[seed // 2 % len(KINDS)]
         try:
-            outline = random_outline(seed, kind, round_=False)
+            outline = mixed_outline(seed, round_=False)
             sure = solve_torsion(outline, **FINE)
         except TorsionError:
             sure = None  # a random drawing may cross itself

@@ -26,7 +26,7 @@ from torsionfe.torsion.solve import solve_torsion
 
 sys.path.insert(0, str(Path(__file__).parents[1] / "tests"))
 from cases import reference_cases
-from random_outlines import KINDS, random_outline
+from random_outlines import mixed_outline
 
 SETTINGS = [
     {"order": order, "rel_tol": rel_tol, "peak_tol": peak_tol, "max_unknowns": most}
@@ -70,9 +70,8 @@ def random_truths(count):
     seed = found = 0
     while found < count:
         seed += 1
-        kind = "arcs" if seed % 2 else KINDS[seed // 2 % len(KINDS)]
         try:
-            outline = random_outline(seed, kind, round_=True)
+            outline = mixed_outline(seed, round_=True)
             exact = solve_torsion(outline, rel_tol=1e-6, order=4, peak_tol=5e-5, max_unknowns=150_000)
         except TorsionError:
             continue  # a random drawing may cross itself

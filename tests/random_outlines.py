@@ -100,6 +100,11 @@ def filleted(outline, share):
     return outline
 
 
+def mixed_outline(seed, round_):
+    """Return a random outline of each kind in turn, every other one of arcs: their corners are the hardest."""
+    return random_outline(seed, "arcs" if seed % 2 else KINDS[seed // 2 % len(KINDS)], round_=round_)
+
+
 def random_outline(seed, kind=None, aspect=None, round_=None):
     """Return a valid outline of a size about one, in a random position.
 

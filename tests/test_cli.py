@@ -297,7 +297,7 @@ def test_sharp_corners_are_said_with_their_remedy_and_filleted_on_request(capsys
     assert "500" in err
 
 
-def test_what_no_tolerance_was_met_within_and_equal_hot_spots_are_said(capsys, tmp_path):
+def test_an_answer_says_what_it_missed_and_how_many_places_are_equal():
     twelve = Outline.from_polygon(shapes.regular(12, 40.0).polygon(0.01))
     shown = str(answer(solve_torsion(twelve), UnitSystem("")))
     assert "and at 8 more places" in shown
@@ -310,7 +310,8 @@ def test_what_no_tolerance_was_met_within_and_equal_hot_spots_are_said(capsys, t
     )
 
 
-def test_results_that_cannot_be_printed_are_no_traceback(tmp_path):
+@pytest.mark.skipif(not Path("/dev/full").exists(), reason="this system has no full device")
+def test_results_that_cannot_be_printed_are_no_traceback():
     with open("/dev/full", "w") as full:
         done = subprocess.run(
             [sys.executable, "-m", "torsionfe", "sections"], stdout=full, stderr=subprocess.PIPE, text=True, check=False

@@ -4,7 +4,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from random_outlines import random_outline
+from random_outlines import mixed_outline
 
 from torsionfe.mesh.bisect import bisect
 from torsionfe.mesh.triangulate import triangulate
@@ -206,8 +206,7 @@ def test_from_afar_marks_what_is_needed_and_no_more():
 @pytest.mark.parametrize("seed", [256, 210])
 def test_a_peak_that_the_mesh_elsewhere_holds_off_is_within_its_error(seed):
     # refined about the peak alone, the first was five times, the second four times its stated error off
-    kind = {256: "arcs", 210: "star"}[seed]
-    outline = random_outline(seed, kind, None, True)
+    outline = mixed_outline(seed, round_=True)
     rough = solve_torsion(outline, rel_tol=2e-4, peak_tol=5e-4).hot_spot
     sure = solve_torsion(outline, rel_tol=1e-6, order=4, peak_tol=5e-5).hot_spot
     off = abs(rough.stress_per_torque / sure.stress_per_torque - 1.0)

@@ -200,7 +200,7 @@ def test_ranges_that_cannot_be_drawn_say_why(found, options, said):
         plot_range(found, **options)
 
 
-def test_a_curve_leaves_out_what_has_no_answer_and_prints_its_failures():
+def test_one_varied_dimension_is_a_curve_and_a_range_names_itself():
     drawn = plot_range(made_up([[0.1, math.nan, 0.3]]))
     assert drawn.axes.get_xlabel().startswith("thickness")
     assert repr(made_up([[0.1, 0.2]])) == "<HandRange of 2 sections over leg_x, leg_y, thickness, root_radius>"

@@ -759,8 +759,8 @@ def a_block_that_is_not_there(space, _):
     [
         (spline_of_a_high_degree, "SPLINE has the degree 60: 1 to|damaged"),
         (spline_with_a_knot_missing, "knots that do not fit its points|damaged"),
-        (spline_with_falling_knots, "knots that do not fit its points|damaged"),
-        (spline_with_a_weight_of_nought, "a weight of 0 or less|damaged"),
+        (spline_with_falling_knots, "knots that do not fit its points"),
+        (spline_with_a_weight_of_nought, "a weight of 0 or less"),
         (a_block_that_is_not_there, "the block 'NOWHERE' is not in the drawing|damaged"),
     ],
 )

@@ -34,7 +34,7 @@ _SPREAD = 12.0  # the smoother acts on the upper 1 / _SPREAD of the spectrum
 _TOLERANCE = 1e-10
 # what needs about ten steps on well-shaped meshes, and what triangles forced to be needles may take
 _MOST_STEPS = 400
-_FEW_STEPS, _FACTORISED = 60, 100_000  # up to this size a slow iteration is given up early: factorising is faster
+_FEW_STEPS, _FACTORISED = 60, 100_000  # up to this size a slow iteration is given up early
 _ENOUGH = 1e-7  # the bounds hold for any function, and move by the square of this
 
 

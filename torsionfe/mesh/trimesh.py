@@ -51,6 +51,14 @@ class TriMesh:
         return np.full((len(self.nodes), 2), -1) if self.history is None else self.history
 
     @cached_property
+    def vertex_nodes(self) -> Ints:
+        """The node where each edge of the outline starts, shape (e,)."""
+        opening = self.side_span[:, 0] == 0.0
+        nodes = np.empty(len(self.edges), dtype=np.int64)
+        nodes[self.side_edge[opening]] = self.sides[opening, 0]
+        return nodes
+
+    @cached_property
     def _linked(self) -> tuple[Ints, Ints, Ints]:
         """Links (node pairs, low first), the links of each triangle, and how often each is used."""
         a, b = self.triangles[:, [1, 2, 0]].ravel(), self.triangles[:, [2, 0, 1]].ravel()

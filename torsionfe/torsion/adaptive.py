@@ -57,10 +57,7 @@ def _corner_nodes(mesh: TriMesh) -> dict[int, float]:
     rows = sharp_corners(mesh.edges)
     if not len(rows):
         return {}
-    opening = mesh.side_span[:, 0] == 0.0
-    node_of = np.full(len(mesh.edges), -1)
-    node_of[mesh.side_edge[opening]] = mesh.sides[opening, 0]
-    return dict(zip(node_of[rows].tolist(), exponents(mesh.edges, rows).tolist(), strict=True))
+    return dict(zip(mesh.vertex_nodes[rows].tolist(), exponents(mesh.edges, rows).tolist(), strict=True))
 
 
 def _decay(mesh: TriMesh, corners: dict[int, float], order: int) -> Floats:

@@ -220,16 +220,6 @@ def _values(fields: Fields, rows: Ints, r: Floats, theta: Floats) -> tuple[Float
     basis = space.element.values(reference)
     phi, omega = (
         np.einsum("kb,kb->k", basis, field[space.dofs[triangle]]).reshape(theta.shape) - at.reshape(shape)
-        for field, at in zip((fields.phi, fields.omega), _at_corners(fields, rows), strict=True)
+        for field, at in ((field, field[mesh.vertex_nodes[rows]]) for field in (fields.phi, fields.omega))
     )
     return phi, omega - (y * offset[..., 0] - x * offset[..., 1])
-
-
-def _at_corners(fields: Fields, rows: Ints) -> tuple[Floats, Floats]:
-    """Return the values of both functions at the corners where the edges ``rows`` start."""
-    mesh = fields.space.mesh
-    opening = np.flatnonzero(mesh.side_span[:, 0] == 0.0)
-    side = np.empty(len(mesh.edges), dtype=np.int64)
-    side[mesh.side_edge[opening]] = opening
-    node = fields.space.side_dofs[side[rows], 0]
-    return fields.phi[node], fields.omega[node]
